@@ -1,0 +1,3 @@
+# What users run.
+set(CMAKE_BUILD_TYPE Release CACHE STRING "")
+set(CMAKE_C_FLAGS_RELEASE "-O2 -DNDEBUG" CACHE STRING "")
