@@ -1,0 +1,95 @@
+#include "formats/table_problems.h"
+
+#include "base/memory.h"
+#include "formats/phrase.h"
+#include "formats/table_messages.h"
+
+#include <string.h>
+
+bool bali_problems_create(bali_problems *problems, const bal_domain *domain, const bal_notices *notices) {
+    *problems = (bali_problems){.domain = domain};
+    if (notices) problems->notices = *notices;
+    problems->untold = bali_allocate(bal_domain_variables(domain), sizeof *problems->untold);
+    return problems->untold != NULL;
+}
+
+void bali_problems_free(bali_problems *problems) {
+    bali_free(problems->untold);
+    problems->untold = NULL;
+}
+
+bool bali_problems_count(bali_problems *problems, bali_problem_kind kind, size_t variable) {
+    if (++problems->counts[kind] <= BALI_MOST_TOLD) return true;
+    if (kind == BALI_BAD_LABEL && !problems->untold[variable]) {
+        problems->untold[variable] = true;
+        problems->n_untold++;
+    }
+    return false;
+}
+
+static bool is_missing(const bal_error *problem) {
+    return strcmp(problem->code, "missing-cells") == 0;
+}
+
+void bali_problems_tell(bali_problems *problems, const bal_error *problem) {
+    if (problems->first.status == BAL_OK) problems->first = *problem;
+    if (problems->first_missing.status == BAL_OK && is_missing(problem)) problems->first_missing = *problem;
+    if (problems->notices.tell) problems->notices.tell(problems->notices.context, BAL_PROBLEM, problem);
+}
+
+/* A number with commas between thousands, in fixed memory. */
+static const char *thousands(uint64_t number, char text[32]) {
+    char digits[24];
+    size_t n = 0, at = 0;
+    do digits[n++] = (char)('0' + number % 10);
+    while ((number /= 10) > 0);
+    while (n > 0) {
+        text[at++] = digits[--n];
+        if (n > 0 && n % 3 == 0) text[at++] = ',';
+    }
+    text[at] = '\0';
+    return text;
+}
+
+static void tell_rest(bali_problems *problems, bali_problem_kind kind, const char *code, const char *what) {
+    if (problems->counts[kind] <= BALI_MOST_TOLD) return;
+    char number[32];
+    bali_phrase phrase = {0};
+    bali_phrase_add(&phrase, "and %s more %s", thousands(problems->counts[kind] - BALI_MOST_TOLD, number), what);
+    if (kind == BALI_BAD_LABEL)
+        bali_phrase_add(&phrase, " in %zu column%s", problems->n_untold, problems->n_untold == 1 ? "" : "s");
+    bal_error rest = {0};
+    (void)bal_error_set(&rest, BAL_ERR_DATA, code, "%s", phrase.text);
+    bal_error_place(&rest, problems->first.file, 0, 0);
+    bali_problems_tell(problems, &rest);
+}
+
+/* All missing cells in one message, placed at the first. */
+static void sum_missing(const bali_problems *problems, const bali_missing_cells *missing, bal_error *sum) {
+    char all[32], incomplete[32], records[32];
+    uint64_t cells = problems->counts[BALI_MISSING_CELL];
+    bali_phrase phrase = {0};
+    bali_phrase_add(&phrase, "%s missing cell%s: ", thousands(cells, all), cells == 1 ? "" : "s");
+    bali_say_largest(problems->domain, missing->counts, &phrase);
+    bali_phrase_add(&phrase, "; the first is here; fill in what is missing, or see --missing: drop would leave out %s of %s records",
+                    thousands(missing->incomplete, incomplete), thousands(missing->records, records));
+    *sum = (bal_error){0};
+    (void)bal_error_set(sum, BAL_ERR_DATA, "missing-cells", "%s", phrase.text);
+    bal_error_place(sum, problems->first_missing.file, problems->first_missing.line, problems->first_missing.column);
+    bal_error_context(sum, problems->first_missing.record, problems->first_missing.variable);
+}
+
+void bali_problems_conclude(bali_problems *problems, const bali_missing_cells *missing, bal_error *failure) {
+    if (problems->first.status == BAL_OK) return;
+    bool missing_first = is_missing(&problems->first);
+    tell_rest(problems, BALI_BAD_LABEL, "unknown-label", "unknown labels");
+    tell_rest(problems, BALI_REPEATED_HEADER, "repeated-header", "repeated headers");
+    if (problems->counts[BALI_MISSING_CELL] > 0) {
+        bal_error sum;
+        sum_missing(problems, missing, &sum);
+        bali_problems_tell(problems, &sum);
+        if (missing_first) problems->first = sum;
+    }
+    if (failure->status != BAL_OK) bali_problems_tell(problems, failure);
+    *failure = problems->first;
+}
