@@ -1,0 +1,86 @@
+/* What a command found, handed to the reports. Everything is borrowed. */
+#ifndef REPORT_FACTS_H
+#define REPORT_FACTS_H
+
+#include "base/json.h"
+#include "base/text.h"
+#include "ballast/fit.h"
+#include "ballast/formats.h"
+#include "ballast/judge.h"
+#include "ballast/posterior.h"
+
+enum { BALI_MOST_INPUTS = 8 };
+
+/** The files that went in, and the records of the table among them. */
+typedef struct bali_data_facts {
+    bal_file_facts inputs[BALI_MOST_INPUTS]; /* the network first */
+    size_t n_inputs;
+    bool from_table;                         /* false: the counts came with a network file */
+    bal_source_summary summary;              /* of the table */
+    double records;
+} bali_data_facts;
+
+/** All that `ballast fit` tells. */
+typedef struct bali_fit_facts {
+    const bal_document *document;
+    const bali_data_facts *data;
+    const bal_prior *prior;
+    const bal_prior_options *prior_options;
+    const bal_fit *fit;
+    const bal_other_prior *others;
+    size_t n_others;
+    const bal_heldout *heldout;        /* NULL when nothing was held out */
+    size_t folds;
+    double level;
+    bool maximum_likelihood;           /* --estimate ml */
+    const char *written;               /* base name of the file written, or NULL */
+    const char *json;                  /* base name of the JSON file, or NULL */
+} bali_fit_facts;
+
+void bali_fit_text(const bali_fit_facts *facts, bali_text *text);
+/** Fails: NUMERIC when an interval cannot be computed; MEMORY. */
+BAL_MUST_CHECK bal_status bali_fit_json(const bali_fit_facts *facts, bali_json *json, bal_error *err);
+
+/** All that `ballast check` tells. */
+typedef struct bali_check_facts {
+    const bal_document *document;
+    const bali_data_facts *data;
+    const bal_cells *counts;          /* NULL without data */
+    const bal_support *support;       /* NULL without data */
+    const double *row_shares, *cell_shares; /* one a variable */
+} bali_check_facts;
+
+void bali_check_text(const bali_check_facts *facts, bali_text *text);
+void bali_check_json(const bali_check_facts *facts, bali_json *json);
+
+/** The opening keys of every JSON result: ballast, inputs, network, data (null without data). */
+void bali_json_head(bali_json *json, const char *command, const bal_document *document, const bali_data_facts *data, bool has_data);
+
+/** The object {parent: outcome} of a row under a key. */
+void bali_json_given(bali_json *json, const char *key, const bal_network *network, size_t variable, size_t row);
+
+/** Rows of a network by what they rest on. */
+typedef struct bali_row_counts {
+    size_t rows, prior, few, data;
+} bali_row_counts;
+bali_row_counts bali_count_rows(const bal_cells *counts);
+
+/** One row of a network. */
+typedef struct bali_row {
+    size_t variable, row;
+    double records;
+} bali_row;
+
+/**
+ * Lists up to most rows that rest on this basis, in network order.
+ * Returns how many there are in all.
+ */
+size_t bali_list_rows(const bal_cells *counts, bal_basis basis, bali_row *rows, size_t most);
+
+/** Lists up to most rows with records whose pseudo-counts sum to less than 1; returns how many there are in all. */
+size_t bali_list_thin_rows(const bal_fit *fit, bali_row *rows, size_t most);
+
+/** Adds "Variable | Parent=outcome, ..." cut to a width in characters with "..." at its end. */
+void bali_put_row_name(bali_text *text, const bal_network *network, size_t variable, size_t row, size_t width);
+
+#endif

@@ -1,0 +1,78 @@
+/* Rows of a network, counted and named for people. */
+#include "model/cells.h"
+#include "model/shape.h"
+#include "report/facts.h"
+
+#include <string.h>
+
+bali_row_counts bali_count_rows(const bal_cells *counts) {
+    bali_row_counts c = {0};
+    const bal_network *network = bal_cells_network(counts);
+    for (size_t v = 0; v < bal_network_variables(network); v++) {
+        size_t r = bal_network_outcomes(network, v), rows = bal_network_rows(network, v);
+        const double *n = bal_cells_family(counts, v);
+        for (size_t row = 0; row < rows; row++, n += r) {
+            bal_basis basis = bal_row_basis(bali_row_sum(n, r));
+            c.prior += basis == BAL_BASIS_PRIOR;
+            c.few += basis == BAL_BASIS_FEW;
+            c.data += basis == BAL_BASIS_DATA;
+        }
+        c.rows += rows;
+    }
+    return c;
+}
+
+size_t bali_list_rows(const bal_cells *counts, bal_basis basis, bali_row *list, size_t most) {
+    size_t found = 0;
+    const bal_network *network = bal_cells_network(counts);
+    for (size_t v = 0; v < bal_network_variables(network); v++) {
+        size_t r = bal_network_outcomes(network, v), rows = bal_network_rows(network, v);
+        const double *n = bal_cells_family(counts, v);
+        for (size_t row = 0; row < rows; row++, n += r) {
+            double records = bali_row_sum(n, r);
+            if (bal_row_basis(records) != basis) continue;
+            if (found < most) list[found] = (bali_row){v, row, records};
+            found++;
+        }
+    }
+    return found;
+}
+
+size_t bali_list_thin_rows(const bal_fit *fit, bali_row *list, size_t most) {
+    size_t found = 0;
+    const bal_network *network = bal_cells_network(fit->counts);
+    for (size_t v = 0; v < bal_network_variables(network); v++) {
+        size_t r = bal_network_outcomes(network, v), rows = bal_network_rows(network, v);
+        const double *n = bal_cells_family(fit->counts, v), *alpha = bal_cells_family(fit->pseudo_counts, v);
+        for (size_t row = 0; row < rows; row++, n += r, alpha += r) {
+            double records = bali_row_sum(n, r);
+            if (records <= 0 || bali_row_sum(alpha, r) >= 1) continue;
+            if (found < most) list[found] = (bali_row){v, row, records};
+            found++;
+        }
+    }
+    return found;
+}
+
+void bali_put_row_name(bali_text *text, const bal_network *network, size_t variable, size_t row, size_t width) {
+    bali_text name = {0};
+    const char *label = bal_domain_name(bal_network_domain(network), variable);
+    size_t n_parents;
+    (void)bal_network_parents(network, variable, &n_parents);
+    bali_text_put_visible(&name, label, strlen(label));
+    if (n_parents > 0) {
+        bali_text_puts(&name, " | ");
+        bali_put_configuration(&name, network, variable, row);
+    }
+    size_t kept = name.length, characters = bali_utf8_count(bali_text_string(&name), name.length);
+    while (characters > width && kept > 0) { /* drop whole characters, leaving three places for dots */
+        size_t room = width > 3 ? width - 3 : 0;
+        do kept--;
+        while (kept > 0 && ((unsigned char)name.bytes[kept] & 0xC0) == 0x80);
+        if (bali_utf8_count(name.bytes, kept) <= room) break;
+    }
+    bali_text_add(text, bali_text_string(&name), kept);
+    if (kept < name.length) bali_text_puts(text, "...");
+    text->failed |= name.failed;
+    bali_text_free(&name);
+}
