@@ -2,8 +2,8 @@
  * 1, a continued fraction, and for large shapes an integral by quadrature. Each gives the tail on one side without
  * cancellation, as a multiple of the density, so that quantiles are found on logarithms and nothing underflows.
  *
- * Places are written as (x, y) with x + y = 1 and the smaller of them exact; the log-odds ln(x/y) are the natural scale:
- * on it the density is w(x) = x^a y^b / B(a, b), which is log-concave, and d ln w = (a - (a + b) x) d log-odds. */
+ * Places are written as (x, y) with x + y = 1 and the smaller of them exact. The natural scale is the log-odds ln(x/y):
+ * on it the density is w(x) = x^a y^b / B(a, b), which is log-concave, and d ln w = (a - (a + b) x) d ln(x/y). */
 #include "base/beta.h"
 
 #include "base/mathematics.h"
@@ -53,7 +53,7 @@ static shapes shapes_of(double a, double b) {
     return s;
 }
 
-/* (a + b) x - a = b - (a + b) y, to nearly all digits of the result: everything near the mean hangs on this difference. */
+/* (a + b) x - a = b - (a + b) y, to nearly all its digits: everything near the mean hangs on this difference. */
 static double excess(const shapes *s, place at) {
     if (at.x <= at.y) return fma(at.x, s->sum, -s->a) + at.x * s->sum_low;
     return -(fma(at.y, s->sum, -s->b) + at.y * s->sum_low);
@@ -73,7 +73,9 @@ static double deviance(double share, double deviation, double relative) {
 static double log_weight(const shapes *s, place at) {
     if (fmin(s->a, s->b) < 1) return s->scale + s->a * log_of_x(at) + s->b * log_of_x(opposite(at));
     double d = excess(s, at);
-    return s->scale - deviance(s->a, d / s->a, at.x * (s->sum / s->a)) - deviance(s->b, -d / s->b, at.y * (s->sum / s->b));
+    double of_x = deviance(s->a, d / s->a, at.x * (s->sum / s->a));
+    double of_y = deviance(s->b, -d / s->b, at.y * (s->sum / s->b));
+    return s->scale - of_x - of_y;
 }
 
 /* Below this x the power series serves for a < 1: there (1 - t)^(b - 1) is a series of small terms. */
@@ -92,9 +94,9 @@ static double power_series(const shapes *s, double x) {
         term *= x * (k - s->b) / k;
         double add = term / (s->a + k);
         sum += add;
-        if (fabs(add) <= DBL_EPSILON / 8 * fabs(sum)) break;
+        if (fabs(add) <= DBL_EPSILON / 8 * fabs(sum)) return sum;
     }
-    return sum;
+    return NAN;
 }
 
 /* ln I_x(a, b) - ln b/(a + b), of the order of a when a is small, and good to its own last digits:
@@ -103,8 +105,8 @@ static double series_log(const shapes *s, place at, double series) {
     return s->gammas + s->a * log_of_x(at) + log1p(s->a * series);
 }
 
-/* I_x(a, b) / w(x) for x up to the mean by the continued fraction of Didonato & Morris 1992 (ACM TOMS 18:360-373, eq. 9,
- * the even part of DLMF 8.17.22), summed forwards by Steed's method. */
+/* I_x(a, b) / w(x) for x up to the mean by the continued fraction of Didonato & Morris 1992 (ACM TOMS 18:360-373; the
+ * even part of DLMF 8.17.22), summed forwards by Steed's method. */
 static double by_continued_fraction(const shapes *s, place at) {
     const double a = s->a, b = s->b, x = at.x, lambda = -excess(s, at);
     double reciprocal = 1 / (a + 1), d = 1 / (a * reciprocal * (lambda + 1)), term = d, sum = d;
@@ -267,8 +269,9 @@ static gap gap_at(const shapes *s, const target *t, place at) {
     return t->p <= t->q ? gap_by_tails(s, t, at) : turned(gap_by_tails(&m, &u, opposite(at)));
 }
 
-/* Odds to start from where a < 1: inside the series' reach the leading power alone, 0 where it underflows; above it, for
- * b >= 1, the upper bound (1 - x)^b falling from there. Negative when the quantile is above the reach and b < 1. */
+/* Odds to start from where a < 1: inside the series' reach the leading power alone, 0 where it underflows; above it,
+ * for b >= 1, the bound on the upper tail that falls from there as (1 - x)^b. Negative when the quantile is above the
+ * reach and b < 1. */
 static double start_of_small(const shapes *s, const target *t) {
     double limit = series_limit(s->b);
     place at = {.x = limit, .y = 1 - limit};
@@ -287,7 +290,8 @@ static double start_of_large(const shapes *s, const target *t) {
     double z = t->p <= t->q ? -bali_normal_quantile(t->p) : bali_normal_quantile(t->q);
     double u = 1 / (2 * s->a - 1), v = 1 / (2 * s->b - 1), h = 2 / (u + v), third = (z * z - 3) / 6;
     double w = z * sqrt(fmax(h + third, 0)) / h - (v - u) * (third + 5.0 / 6 - 2 / (3 * h));
-    return fmin(fmax(s->a / s->b * exp(-2 * w), DBL_MIN), 1 / DBL_MIN); /* no quantile of such shapes is nearer to an end */
+    double least = DBL_MIN; /* no quantile of such shapes is nearer to an end, bad as the start may be */
+    return fmin(fmax(s->a / s->b * exp(-2 * w), least), 1 / least);
 }
 
 static double start_odds(const shapes *s, const target *t) {

@@ -19,11 +19,12 @@ bool bali_beta_cdf(double a, double b, double x, double *lower, double *upper);
 /**
  * The x with I_x(a, b) = p, for 0 < p < 1.
  *
- * To 1e-10 relative (of the smaller of x and 1 - x where a double can say it) for a, b from 1e-12 to 1e15 and any p; 0 or
- * 1 where the quantile is closer to them than a double can say, which is the right answer for tiny shapes. false, and
- * nothing written, outside the domain of bali_beta_cdf or when it cannot be computed.
+ * To 1e-10 relative (of the smaller of x and 1 - x where a double can say it) for a, b from 1e-12 to 1e15 and any p; 0
+ * or 1 where the quantile is closer to them than a double can say, which is the right answer for tiny shapes. false,
+ * and nothing written, outside the domain of bali_beta_cdf or when it cannot be computed.
  *
- * Cost: one to four evaluations of the distribution function, about a microsecond. No allocation. Safe from several threads.
+ * Cost: one to four evaluations of the distribution function, about a microsecond. No allocation. Safe from several
+ * threads.
  */
 bool bali_beta_quantile(double a, double b, double p, double *x);
 

@@ -156,8 +156,9 @@ static size_t first_room(const bali_input *input, size_t limit) {
 }
 
 static bal_status too_large(const bali_input *input, size_t limit, bal_error *err) {
-    bal_status status = bal_error_set(err, BAL_ERR_DATA, "file-too-large",
-                                      "is larger than %zu bytes, the most that is read of such a file; check that it is the right one", limit);
+    bal_status status =
+        bal_error_set(err, BAL_ERR_DATA, "file-too-large",
+                      "is larger than %zu bytes, the most that is read of such a file; check that it is the right one", limit);
     bal_error_place(err, bali_input_name(input), 0, 0);
     return status;
 }

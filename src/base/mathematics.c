@@ -154,7 +154,7 @@ static point first_point(double (*f)(double x, void *context), void *context, do
     return best;
 }
 
-/* Whether a parabola's step may be trusted: it stays inside and shrinks to less than half of the step before the last. */
+/* Whether a parabola's step may be trusted: it stays inside, and is less than half of the step before the last. */
 static bool is_good_step(double step, double before_last, double to_low, double to_high) {
     return fabs(step) < fabs(before_last) / 2 && step > to_low && step < to_high;
 }
@@ -164,7 +164,8 @@ double bali_maximise(double (*f)(double x, void *context), void *context, double
     point best = first_point(f, context, low, high), second = best, third = best;
     double last = 0, before_last = 0;
     for (;;) {
-        double least = fmax(fmax(tolerance / 2, 2 * DBL_EPSILON * fabs(best.x)), DBL_MIN), middle = low + (high - low) / 2;
+        double least = fmax(fmax(tolerance / 2, 2 * DBL_EPSILON * fabs(best.x)), DBL_MIN);
+        double middle = low + (high - low) / 2;
         if (!(fmax(best.x - low, high - best.x) > 2 * least)) break;
         double step = vertex_step(best, second, third);
         if (!is_good_step(step, before_last, low - best.x, high - best.x)) {

@@ -39,7 +39,10 @@ typedef struct bali_sum {
 void bali_sum_add(bali_sum *sum, double term);
 double bali_sum_value(const bali_sum *sum);
 
-/** Mean and variance of a stream, and of the union of two streams (Welford 1962; Chan, Golub & LeVeque 1983). Start it with = {0}. */
+/**
+ * Mean and variance of a stream, and of the union of two streams (Welford 1962; Chan, Golub & LeVeque 1983). Start it
+ * with = {0}.
+ */
 typedef struct bali_moments {
     double n, mean, squares; /* squares: the sum of squared deviations from the mean */
 } bali_moments;
@@ -49,11 +52,11 @@ void bali_moments_merge(bali_moments *moments, const bali_moments *more);
 double bali_moments_standard_error(const bali_moments *moments);
 
 /**
- * The x in [low, high] where f is largest, to an absolute tolerance > 0, by golden section and parabolas (Brent 1973, ch. 5),
- * f having one top there.
+ * The x in [low, high] where f is largest, to an absolute tolerance > 0, by golden section and parabolas (Brent 1973,
+ * ch. 5), f having one top there.
  *
- * f may be -infinity, never NaN; where it is finite only between two points of a grid of 64, the top may be missed. An end
- * of the interval is returned exactly when f is larger there than at any point inside that was met.
+ * f may be -infinity, never NaN; where it is finite only between two points of a grid of 64, the top may be missed. An
+ * end of the interval is returned exactly when f is larger there than at any point inside that was met.
  */
 double bali_maximise(double (*f)(double x, void *context), void *context, double low, double high, double tolerance);
 

@@ -43,3 +43,14 @@ void bali_phrase_quote(bali_phrase *phrase, const char *text, size_t length) {
     bali_phrase_text(phrase, text, length);
     bali_phrase_add(phrase, "\"");
 }
+
+void bali_phrase_count(bali_phrase *phrase, uint64_t count) {
+    char digits[24];
+    size_t n = 0;
+    do digits[n++] = (char)('0' + count % 10);
+    while ((count /= 10) > 0);
+    while (n > 0) {
+        n--;
+        bali_phrase_add(phrase, n > 0 && n % 3 == 0 ? "%c," : "%c", digits[n]);
+    }
+}

@@ -144,7 +144,9 @@ void bali_say_largest(const bal_domain *domain, const uint64_t *counts, bali_phr
     for (size_t v = 0; v < bal_domain_variables(domain); v++) in_all += counts[v] > 0;
     for (size_t v = BAL_NONE; listed < MOST_COUNTS && listed < in_all && phrase->length < sizeof phrase->text / 2; listed++) {
         v = next_largest(domain, counts, v);
-        bali_phrase_add(phrase, "%s%" PRIu64 " in ", listed ? ", " : "", counts[v]);
+        if (listed > 0) bali_phrase_add(phrase, ", ");
+        bali_phrase_count(phrase, counts[v]);
+        bali_phrase_add(phrase, " in ");
         bali_phrase_text(phrase, bal_domain_name(domain, v), strlen(bal_domain_name(domain, v)));
     }
     if (listed < in_all) bali_phrase_add(phrase, " and in %zu more columns", in_all - listed);

@@ -37,25 +37,12 @@ void bali_problems_tell(bali_problems *problems, const bal_error *problem) {
     if (problems->notices.tell) problems->notices.tell(problems->notices.context, BAL_PROBLEM, problem);
 }
 
-/* A number with commas between thousands, in fixed memory. */
-static const char *thousands(uint64_t number, char text[32]) {
-    char digits[24];
-    size_t n = 0, at = 0;
-    do digits[n++] = (char)('0' + number % 10);
-    while ((number /= 10) > 0);
-    while (n > 0) {
-        text[at++] = digits[--n];
-        if (n > 0 && n % 3 == 0) text[at++] = ',';
-    }
-    text[at] = '\0';
-    return text;
-}
-
 static void tell_rest(bali_problems *problems, bali_problem_kind kind, const char *code, const char *what) {
     if (problems->counts[kind] <= BALI_MOST_TOLD) return;
-    char number[32];
     bali_phrase phrase = {0};
-    bali_phrase_add(&phrase, "and %s more %s", thousands(problems->counts[kind] - BALI_MOST_TOLD, number), what);
+    bali_phrase_add(&phrase, "and ");
+    bali_phrase_count(&phrase, problems->counts[kind] - BALI_MOST_TOLD);
+    bali_phrase_add(&phrase, " more %s", what);
     if (kind == BALI_BAD_LABEL)
         bali_phrase_add(&phrase, " in %zu column%s", problems->n_untold, problems->n_untold == 1 ? "" : "s");
     bal_error rest = {0};
@@ -66,13 +53,16 @@ static void tell_rest(bali_problems *problems, bali_problem_kind kind, const cha
 
 /* All missing cells in one message, placed at the first. */
 static void sum_missing(const bali_problems *problems, const bali_missing_cells *missing, bal_error *sum) {
-    char all[32], incomplete[32], records[32];
     uint64_t cells = problems->counts[BALI_MISSING_CELL];
     bali_phrase phrase = {0};
-    bali_phrase_add(&phrase, "%s missing cell%s: ", thousands(cells, all), cells == 1 ? "" : "s");
+    bali_phrase_count(&phrase, cells);
+    bali_phrase_add(&phrase, " missing cell%s: ", cells == 1 ? "" : "s");
     bali_say_largest(problems->domain, missing->counts, &phrase);
-    bali_phrase_add(&phrase, "; the first is here; fill in what is missing, or see --missing: drop would leave out %s of %s records",
-                    thousands(missing->incomplete, incomplete), thousands(missing->records, records));
+    bali_phrase_add(&phrase, "; the first is here; fill in what is missing, or see --missing: drop would leave out ");
+    bali_phrase_count(&phrase, missing->incomplete);
+    bali_phrase_add(&phrase, " of ");
+    bali_phrase_count(&phrase, missing->records);
+    bali_phrase_add(&phrase, " records");
     *sum = (bal_error){0};
     (void)bal_error_set(sum, BAL_ERR_DATA, "missing-cells", "%s", phrase.text);
     bal_error_place(sum, problems->first_missing.file, problems->first_missing.line, problems->first_missing.column);

@@ -13,7 +13,7 @@
 #include <string.h>
 
 /* How much is handed to libxml2 at a time: it keeps no more of the text than this. */
-enum { PIECE = 1 << 18 };
+enum { PIECE = 1 << 18, LONGEST_REFERENCE = 300 };
 
 struct bali_xml {
     char *file, *text;
@@ -128,9 +128,9 @@ static void on_text(void *context, const xmlChar *bytes, int length) {
     fail(xml, xml->listener->text(xml->listener->context, (const char *)bytes, (size_t)length, xml->err));
 }
 
-/* What libxml2 finds wrong, in our words where that is likely to be met; NULL else. before: the character before the place. */
-static const char *explain(int code, char before) {
-    if (before == '&' && code == XML_ERR_NAME_REQUIRED) code = XML_ERR_ENTITYREF_SEMICOL_MISSING;
+/* What libxml2 finds wrong, in our words where that is likely to be met; NULL else. */
+static const char *explain(int code, char at_place) {
+    if (at_place == '&' && code == XML_ERR_NAME_REQUIRED) code = XML_ERR_ENTITYREF_SEMICOL_MISSING;
     switch (code) {
     case XML_ERR_INVALID_CHAR:
     case XML_ERR_INVALID_CHARREF:
@@ -161,11 +161,27 @@ static void set_other(bali_xml *xml, const char *sentence) {
     bali_text_free(&text);
 }
 
-/* Where what is reported stands. Of a ]]> libxml2 knows no more than the text that it is in. */
+/* Where what is reported stands. libxml2 has come to the end of a reference, and of a ]]> it knows no more than the text that it
+ * is in. */
 static size_t place_of(const bali_xml *xml, int code) {
-    size_t at = parser_offset(xml);
-    const char *found = code == XML_ERR_MISPLACED_CDATA_END ? strstr(xml->text + at, "]]>") : NULL;
-    return found ? (size_t)(found - xml->text) : at;
+    size_t at = parser_offset(xml), back = at;
+    const char *found;
+    switch (code) {
+    case XML_ERR_MISPLACED_CDATA_END:
+        found = strstr(xml->text + at, "]]>");
+        return found ? (size_t)(found - xml->text) : at;
+    case XML_ERR_INVALID_CHAR:
+    case XML_ERR_INVALID_CHARREF:
+    case XML_ERR_INVALID_DEC_CHARREF:
+    case XML_ERR_INVALID_HEX_CHARREF:
+    case XML_ERR_UNDECLARED_ENTITY:
+    case XML_WAR_UNDECLARED_ENTITY:
+    case XML_ERR_ENTITYREF_SEMICOL_MISSING:
+    case XML_ERR_NAME_REQUIRED:
+        while (back > 0 && at - back < LONGEST_REFERENCE && !strchr("&<>\n", xml->text[back - 1])) back--;
+        return back > 0 && xml->text[back - 1] == '&' ? back - 1 : at;
+    default: return at;
+    }
 }
 
 /* The first report counts: by default libxml2 would keep the last. What is only a warning is told by the guard. */
@@ -177,9 +193,7 @@ static void on_report(void *context, xmlErrorPtr report) {
         return;
     }
     size_t at = place_of(xml, report->code);
-    char before = at > 0 ? xml->text[at - 1] : '\0';
-    const char *words = explain(report->code, before);
-    if (before == '&') at--;
+    const char *words = explain(report->code, xml->text[at]);
     if (words) {
         (void)bal_error_set(xml->err, BAL_ERR_SYNTAX, "bad-xml", "%s", words);
     } else {

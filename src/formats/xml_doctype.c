@@ -39,12 +39,17 @@ static bal_status refuse_reference(const bali_xml_guard *guard, size_t at, bal_e
                                "parameter references are not accepted; write the declarations themselves in their place");
 }
 
+static int shown(size_t bytes) {
+    return bytes < 40 ? (int)bytes : 40;
+}
+
+/* The value is what stands between two offsets. */
 static void remark_default(bali_xml_guard *guard, word element, word attribute, size_t from, size_t to) {
     char message[256];
     (void)snprintf(message, sizeof message,
-                   "the default value %.*s of attribute %.*s of %.*s in the document type is not applied; write it in each tag",
-                   (int)(to - from < 40 ? to - from : 40), guard->text + from, (int)(attribute.bytes < 40 ? attribute.bytes : 40),
-                   guard->text + attribute.at, (int)(element.bytes < 40 ? element.bytes : 40), guard->text + element.at);
+                   "the default value \"%.*s\" of attribute %.*s of %.*s in the document type is not applied; write it in each tag",
+                   shown(to - from), guard->text + from, shown(attribute.bytes), guard->text + attribute.at, shown(element.bytes),
+                   guard->text + element.at);
     guard->remark(guard->context, attribute.at, "default-attribute", message);
 }
 
@@ -62,7 +67,7 @@ static bal_status attribute_list(bali_xml_guard *guard, size_t begin, size_t *i,
         if (c == '"' || c == '\'') {
             bal_status status = skip_literal(guard, begin, i, err);
             if (status != BAL_OK) return status;
-            remark_default(guard, element, attribute, from, *i);
+            remark_default(guard, element, attribute, from + 1, *i - 1);
             next = NAME;
         } else if (c == '(') {
             bal_status status = bali_xml_guard_find(guard, begin, from, ")", what, i, err);

@@ -30,10 +30,17 @@ static void add_marginal(const double *alpha, const double *n, size_t r, double 
     if (n_total > 0) bali_sum_add(sum, -bali_log_pochhammer(alpha_total, n_total));
 }
 
-/* sum_k n_k ln [(alpha_k + n_k - 1) / (alpha + N - 1)]; n - 1 first, so that a small alpha is not lost when n = 1. */
+/* ln [(alpha_k + n_k - 1) / (alpha + N - 1)]; n - 1 first, so that a small alpha is not lost when n = 1. Near 1 by what the
+ * other outcomes have, so that n_k times it keeps its digits when n_k is large. */
+static double log_left_out(double alpha, double n, double alpha_total, double n_total) {
+    double total = alpha_total + (n_total - 1), others = (alpha_total - alpha) + (n_total - n);
+    return 2 * others < total ? log1p(-others / total) : log((alpha + (n - 1)) / total);
+}
+
+/* sum_k n_k ln [(alpha_k + n_k - 1) / (alpha + N - 1)] */
 static void add_leave_one_out(const double *alpha, const double *n, size_t r, double alpha_total, double n_total, bali_sum *sum) {
     for (size_t k = 0; k < r; k++)
-        if (n[k] > 0) bali_sum_add(sum, n[k] * log((alpha[k] + (n[k] - 1)) / (alpha_total + (n_total - 1))));
+        if (n[k] > 0) bali_sum_add(sum, n[k] * log_left_out(alpha[k], n[k], alpha_total, n_total));
 }
 
 typedef void (*add_row)(const double *alpha, const double *n, size_t r, double alpha_total, double n_total, bali_sum *sum);

@@ -5,6 +5,10 @@
  *
  *   log marginal likelihood  sum times x ln (s u)_n
  *   leave-one-out            sum times x n ln (s u + n - 1)          times < 0 for the rows' totals
+ *
+ * What is the same for every strength s is left out: ln u of a single record (n = 1: ln s + ln u), and n ln (n - 1) of the
+ * leave-one-out terms. So a table that no strength explains better than another has no term at all, whatever the last bits of
+ * a logarithm, and large counts do not drown the differences.
  */
 #include "ballast/prior.h"
 
@@ -16,10 +20,6 @@
 
 #include <math.h>
 #include <stdlib.h>
-
-/* Scores that differ by less than this, relatively, over the whole grid are the same: a single record is as likely under
- * every strength, and the last bits of a logarithm must not choose. */
-static const double FLAT = 1e-10;
 
 typedef struct term {
     double unit, n, times;
@@ -33,6 +33,7 @@ typedef struct score_terms {
 
 static bool add_term(score_terms *s, double unit, double n, double times) {
     if (n <= 0) return true;
+    if (n == 1 && unit > 0) unit = 1;
     if (!bali_grow((void **)&s->terms, &s->capacity, s->n_terms + 1, sizeof *s->terms)) return false;
     s->terms[s->n_terms++] = (term){unit, n, times};
     return true;
@@ -81,34 +82,36 @@ static bal_status collect_terms(const bal_prior *prior, const bal_cells *counts,
     return BAL_OK;
 }
 
+static double value_of(const term *t, double alpha, bool leave_one_out) {
+    if (!leave_one_out) return bali_log_pochhammer(alpha, t->n);
+    return t->n > 1 ? t->n * log1p(alpha / (t->n - 1)) : log(alpha + (t->n - 1));
+}
+
+/* The score at a strength, less what all strengths have in common. */
 static double score_at(double log_strength, void *context) {
     const score_terms *s = context;
     double strength = exp(log_strength);
     bali_sum sum = {0};
     for (size_t i = 0; i < s->n_terms; i++) {
         const term *t = &s->terms[i];
-        double alpha = strength * t->unit;
-        double value = s->leave_one_out ? t->n * log(alpha + (t->n - 1)) : bali_log_pochhammer(alpha, t->n);
-        bali_sum_add(&sum, t->times * value);
+        bali_sum_add(&sum, t->times * value_of(t, strength * t->unit, s->leave_one_out));
     }
     double score = bali_sum_value(&sum);
     return isnan(score) ? -INFINITY : score;
 }
 
-/* The best point of the grid, refined between its neighbours; *flat when all of the grid scores the same. */
-static double best_log_strength(score_terms *s, int *at_end, bool *found, bool *flat) {
+/* The best point of the grid, refined between its neighbours. */
+static double best_log_strength(score_terms *s, int *at_end, bool *found) {
     const double low = log(BAL_STRENGTH_LEAST), high = log(BAL_STRENGTH_MOST), step = (high - low) / (BAL_STRENGTH_POINTS - 1);
-    double best = low, best_score = -INFINITY, worst_score = INFINITY;
+    double best = low, best_score = -INFINITY;
     for (int i = 0; i < BAL_STRENGTH_POINTS; i++) {
         double x = i == BAL_STRENGTH_POINTS - 1 ? high : low + i * step, score = score_at(x, s);
         if (score > best_score) {
             best = x;
             best_score = score;
         }
-        worst_score = fmin(worst_score, score);
     }
     *found = isfinite(best_score);
-    *flat = best_score - worst_score <= FLAT * fmax(1, fabs(best_score));
     double refined = bali_maximise(score_at, s, fmax(low, best - step), fmin(high, best + step), 1e-4);
     if (score_at(refined, s) >= best_score) best = refined;
     *at_end = best < low + 1e-3 ? -1 : best > high - 1e-3 ? 1 : 0;
@@ -123,16 +126,15 @@ bal_status bal_prior_settle(const bal_prior *prior, const bal_cells *counts, bal
     score_terms s = {.leave_one_out = prior->choice == BAL_STRENGTH_BY_LEAVE_ONE_OUT};
     bal_status status = collect_terms(prior, counts, &s, err);
     if (status == BAL_OK && s.n_terms > 0) {
-        bool found, flat;
-        double best = best_log_strength(&s, &strength->at_end, &found, &flat);
+        bool found;
+        double best = best_log_strength(&s, &strength->at_end, &found);
         if (!found)
             status = bal_error_set(err, BAL_ERR_NUMERIC, "no-strength",
                                    "no strength of the prior gives these counts a finite score; give the strength yourself");
-        strength->chosen = !flat;
-        if (flat) strength->at_end = 0;
-        else strength->value = strength->at_end < 0   ? BAL_STRENGTH_LEAST
-                               : strength->at_end > 0 ? BAL_STRENGTH_MOST
-                                                      : bali_round_significant(exp(best), 3);
+        strength->chosen = true;
+        strength->value = strength->at_end < 0   ? BAL_STRENGTH_LEAST
+                          : strength->at_end > 0 ? BAL_STRENGTH_MOST
+                                                 : bali_round_significant(exp(best), 3);
     }
     bali_free(s.terms);
     return status;

@@ -6,7 +6,7 @@
 #include <math.h>
 #include <string.h>
 
-enum { ROWS_SHOWN = 3, PAGE_WIDTH = 79, LABEL_WIDTH = 10 };
+enum { ROWS_SHOWN = 3, PAGE_WIDTH = 79, LABEL_WIDTH = 10, COUNT_EDGE = 39 };
 
 static const bal_network *network_of(const bali_fit_facts *facts) {
     return bal_document_network(facts->document);
@@ -102,23 +102,32 @@ static void put_count(bali_text *text, const char *what, uint64_t n) {
     bali_text digits = {0};
     bali_text_put_thousands(&digits, n);
     bali_text_puts(text, what);
-    size_t column = 42 > digits.length ? 42 - digits.length : 0;
+    size_t column = COUNT_EDGE > digits.length ? COUNT_EDGE - digits.length : 0;
     bali_text_pad(text, column);
     bali_text_puts(text, bali_text_string(&digits));
     bali_text_free(&digits);
 }
 
-static void put_difference(bali_text *text, const bal_paired *paired) {
-    bali_text_printf(text, "%11.4f%11.4f", paired->bayes, paired->ml);
-    if (isnan(paired->standard_error)) {
-        bali_text_printf(text, "%9.4f\n", paired->mean_difference);
-    } else {
-        bali_text_printf(text, "%9.4f +- %.4f\n", paired->mean_difference, paired->standard_error);
-    }
+/* Decimals that give a standard error two significant digits, four at least. */
+static int decimals_for(double standard_error) {
+    if (!(standard_error > 0)) return 4;
+    int decimals = 1 - (int)floor(log10(standard_error));
+    return decimals < 4 ? 4 : decimals > 7 ? 7 : decimals;
 }
 
-static double share(uint64_t part, uint64_t whole) {
-    return 100 * (double)part / (double)whole;
+static void put_difference(bali_text *text, const bal_paired *paired) {
+    int decimals = decimals_for(paired->standard_error);
+    bali_text_printf(text, "%10.4f%10.4f  %7.*f", paired->bayes, paired->ml, decimals, paired->mean_difference);
+    if (!isnan(paired->standard_error)) bali_text_printf(text, " +- %.*f", decimals, paired->standard_error);
+    bali_text_putc(text, '\n');
+}
+
+/* "11 of these 250 records (4.4 %)". */
+static void put_share(bali_text *words, uint64_t part, uint64_t whole) {
+    bali_text_put_thousands(words, part);
+    bali_text_puts(words, " of these ");
+    bali_text_put_thousands(words, whole);
+    bali_text_printf(words, " records (%.3g %%)", 100 * (double)part / (double)whole);
 }
 
 /* Why ML cannot be compared on all records, and what it would have to do. */
@@ -127,8 +136,14 @@ static void put_verdict(bali_text *text, const bal_heldout *h, bali_text *words)
     if (others == 0) {
         bali_text_puts(words, "ML had seen every cell that these records needed, so it can be scored on all of them.");
     } else {
-        bali_text_printf(words, "ML calls %.1f %% of these records impossible", share(h->impossible, h->records));
-        if (h->undefined > 0) bali_text_printf(words, " and has no answer for %.1f %% more", share(h->undefined, h->records));
+        bali_text_puts(words, h->impossible > 0 ? "ML calls " : "ML has no answer for ");
+        put_share(words, h->impossible > 0 ? h->impossible : h->undefined, h->records);
+        if (h->impossible > 0) bali_text_puts(words, " impossible");
+        if (h->impossible > 0 && h->undefined > 0) {
+            bali_text_puts(words, " and has no answer for ");
+            bali_text_put_thousands(words, h->undefined);
+            bali_text_puts(words, " more");
+        }
         bali_text_printf(words, ", so its total is %s. Records whose cells it had seen favour it.",
                          h->impossible > 0 ? "minus infinity" : "undefined");
         if (isfinite(h->break_even)) {
@@ -150,13 +165,13 @@ static void put_heldout(bali_text *text, const bali_fit_facts *facts, bali_text 
                      facts->folds);
     bali_text_put_wrapped(text, bali_text_string(words), 0, 0);
     bali_text_clear(words);
-    bali_text_puts(text, "                                   records      Bayes         ML  Bayes - ML\n");
+    bali_text_puts(text, "                                records     Bayes        ML  Bayes - ML\n");
     if (others == 0) {
         put_count(text, "  all records", h->records);
         put_difference(text, &h->on_comparable);
     } else {
         put_count(text, "  all records", h->records);
-        bali_text_printf(text, "%11.4f%11s\n", h->bayes_log_likelihood / (double)h->records, h->impossible ? "-inf" : "undefined");
+        bali_text_printf(text, "%10.4f%10s\n", h->bayes_log_likelihood / (double)h->records, h->impossible ? "-inf" : "undefined");
         put_count(text, "    whose cells ML had seen", h->comparable);
         if (h->comparable > 0) {
             put_difference(text, &h->on_comparable);
@@ -164,11 +179,11 @@ static void put_heldout(bali_text *text, const bali_fit_facts *facts, bali_text 
             bali_text_putc(text, '\n');
         }
         put_count(text, "    the rest", others);
-        bali_text_printf(text, "%11.4f%11s\n", h->bayes_on_others, h->impossible ? "-inf" : "undefined");
+        bali_text_printf(text, "%10.4f%10s\n", h->bayes_on_others, h->impossible ? "-inf" : "undefined");
     }
     put_count(text, "  the prior alone, all records", h->records);
-    bali_text_printf(text, "%11.4f\n", h->prior_log_likelihood / (double)h->records);
-    put_count(text, "  quadratic score (lower is better)", h->records);
+    bali_text_printf(text, "%10.4f\n", h->prior_log_likelihood / (double)h->records);
+    put_count(text, "  quadratic score (low is good)", h->records);
     put_difference(text, &h->quadratic);
     put_verdict(text, h, words);
 }

@@ -1,4 +1,4 @@
-/* Made by tests/reference/mathematics_values.py with mpmath, 60 digits rounded once; do not edit. */
+/* Made by tests/reference/mathematics_values.py from 60 digits of mpmath; do not edit. */
 #ifndef BASE_BETA_VALUES_H
 #define BASE_BETA_VALUES_H
 
@@ -1087,7 +1087,7 @@ static const double beta_quantile_values[][4] = {
     {1000000.0, 10000.0, 0.999999999999, 0.9907764249319342},
 };
 
-/* the same, tiny shapes at the probabilities where x leaves 0 and 1 */
+/* the same, tiny shapes where x leaves 0 and 1 */
 static const double narrow_quantile_values[][4] = {
     {1e-06, 1e-06, 0.49996591518387634, 2.4734037602244416e-30},
     {1e-06, 1e-06, 0.5000340848161237, 1.0},

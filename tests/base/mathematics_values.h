@@ -1,4 +1,4 @@
-/* Made by tests/reference/mathematics_values.py with mpmath, 60 digits rounded once; do not edit. */
+/* Made by tests/reference/mathematics_values.py from 60 digits of mpmath; do not edit. */
 #ifndef BASE_MATHEMATICS_VALUES_H
 #define BASE_MATHEMATICS_VALUES_H
 

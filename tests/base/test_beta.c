@@ -23,7 +23,8 @@ typedef struct tails {
 
 static tails tails_at(double a, double b, double x) {
     tails t = {NAN, NAN};
-    if (!bali_beta_cdf(a, b, x, &t.below, &t.above)) ck_abort_msg("no tails at a = %.17g, b = %.17g, x = %.17g", a, b, x);
+    bool known = bali_beta_cdf(a, b, x, &t.below, &t.above);
+    if (!known) ck_abort_msg("no tails at a = %.17g, b = %.17g, x = %.17g", a, b, x);
     return t;
 }
 
@@ -71,7 +72,7 @@ START_TEST(quantiles_of_tiny_shapes_agree_with_many_digits) {
 }
 END_TEST
 
-/* All published values below are recalled from memory; the last column is half a unit of their last place unless said. */
+/* These published values are all recalled from memory. Tolerances are half a unit of the last place, or as said. */
 static const struct {
     const char *name;
     double a, b, p, printed, tolerance;
@@ -99,9 +100,9 @@ static const struct {
     {"BDA, prior 0.485, 200, median", 534, 646, 0.5, 0.453, 0.0005},
     {"BDA, prior 0.485, 200, lower", 534, 646, 0.025, 0.424, 0.0005},
     {"BDA, prior 0.485, 200, upper", 534, 646, 0.975, 0.481, 0.0005},
-    /* Brown, Cai & DasGupta 2001, Statistical Science 16:101-133, Table 5: 95 % limits of the modified Jeffreys interval, x
-     * of n, Beta(x + 1/2, n - x + 1/2). Three entries are one unit of the last place off what they are recalled as, by
-     * recall or by the paper's rounding: those have a whole unit's tolerance. */
+    /* Brown, Cai & DasGupta 2001, Statistical Science 16:101-133, Table 5: 95 % limits of the modified Jeffreys
+     * interval, x of n, Beta(x + 1/2, n - x + 1/2). Three entries are one unit of the last place off what they are
+     * recalled as, by recall or by the paper's rounding: those have a whole unit's tolerance. */
     {"BCD 2 of 7, lower", 2.5, 5.5, 0.025, 0.065, 0.0005},
     {"BCD 2 of 7, upper", 2.5, 5.5, 0.975, 0.648, 0.0005},
     {"BCD 3 of 7, lower", 3.5, 4.5, 0.025, 0.139, 0.0005},
@@ -143,12 +144,12 @@ static const struct {
     {"BCD 0 of 10, upper", 1, 10, 0.975, 0.308, 0.0005},
     {"BCD 0 of 11, upper", 1, 11, 0.975, 0.285, 0.0005},
     {"BCD 0 of 12, upper", 1, 12, 0.975, 0.265, 0.0005},
-    /* Agresti 2002, Categorical Data Analysis, 2nd ed., section 1.4.3: 0 vegetarians of 25, uniform prior; Clopper-Pearson */
+    /* Agresti 2002, Categorical Data Analysis, 2nd ed., section 1.4.3: 0 vegetarians of 25, uniform prior */
     {"Agresti, lower", 1, 26, 0.025, 0.001, 0.0005},
     {"Agresti, upper", 1, 26, 0.975, 0.132, 0.0005},
     {"Agresti, Clopper-Pearson", 1, 25, 0.975, 0.137, 0.0005},
-    /* NIST/SEMATECH e-Handbook of Statistical Methods 7.2.4.2: 4 of 20, 90 %; its upper limit came from a spreadsheet's goal
-     * seek and is 9e-7 off */
+    /* NIST/SEMATECH e-Handbook of Statistical Methods 7.2.4.2: 4 of 20, 90 %; its upper limit came from a spreadsheet's
+     * goal seek and is 9e-7 off */
     {"NIST 7.2.4.2, lower", 4, 17, 0.05, 0.071354, 5e-7},
     {"NIST 7.2.4.2, upper", 5, 16, 0.95, 0.401029, 2e-6},
 };
@@ -159,9 +160,10 @@ START_TEST(published_limits) {
 }
 END_TEST
 
-/* NIST/SEMATECH e-Handbook 1.3.6.7.2 (t at 0.975, through Beta(nu/2, 1/2)) and 1.3.6.7.3 (F at 0.95); recalled from memory. */
+/* NIST/SEMATECH e-Handbook 1.3.6.7.2 (t at 0.975, through Beta(nu/2, 1/2)) and 1.3.6.7.3 (F at 0.95), from memory. */
 static const double t_table[][2] = {{1, 12.706}, {2, 4.303}, {5, 2.571}, {10, 2.228}, {30, 2.042}, {100, 1.984}};
-static const double f_table[][3] = {{1, 1, 161.448}, {2, 10, 4.103}, {5, 10, 3.326}, {10, 10, 2.978}, {3, 20, 3.098}, {10, 20, 2.348}};
+static const double f_table[][3] = {{1, 1, 161.448},  {2, 10, 4.103}, {5, 10, 3.326},
+                                    {10, 10, 2.978}, {3, 20, 3.098}, {10, 20, 2.348}};
 
 START_TEST(tables_of_t_and_f) {
     for (size_t i = 0; i < LENGTH(t_table); i++) {
@@ -175,14 +177,14 @@ START_TEST(tables_of_t_and_f) {
 }
 END_TEST
 
-/* Laplace's births in Paris, 241,945 girls and 251,527 boys: P(theta >= 1/2) = 1.15e-42 (Gelman et al. 2013, section 2.4,
- * recalled from memory). */
+/* Laplace's births in Paris, 241,945 girls and 251,527 boys: P(theta >= 1/2) = 1.15e-42 (Gelman et al. 2013, section
+ * 2.4, recalled from memory). */
 START_TEST(births_of_laplace) {
     ck_assert_double_eq_tol(above(241946, 251528, 0.5) * 1e42, 1.15, 0.005);
 }
 END_TEST
 
-/* Closed forms: I_x(1, b) = 1 - (1 - x)^b, I_x(a, 1) = x^a, and the arcsine law I_x(1/2, 1/2) = (2/pi) arcsin sqrt x. */
+/* I_x(1, b) = 1 - (1 - x)^b, I_x(a, 1) = x^a, and the arcsine law I_x(1/2, 1/2) = (2/pi) arcsin sqrt x. */
 START_TEST(closed_forms) {
     const double shapes[] = {1e-6, 1e-3, 0.3, 1, 2, 77.5, 1e4, 1e9}, pi = acos(-1);
     const double probabilities[] = {1e-12, 1e-4, 0.005, 0.025, 0.3, 0.5, 0.7, 0.975, 1 - 0x1p-30};
@@ -200,7 +202,8 @@ START_TEST(closed_forms) {
 }
 END_TEST
 
-static const double grid[] = {1e-12, 1e-6, 1e-3, 0.03, 0.5, 0.999, 1, 1.5, 3, 12, 100, 2345.5, 9999, 1e4, 1e5, 1e6, 3e7, 1e9, 1e12, 1e15};
+static const double grid[] = {1e-12, 1e-6,   1e-3, 0.03, 0.5, 0.999, 1,   1.5, 3,    12,
+                              100,   2345.5, 9999, 1e4,  1e5, 1e6,   3e7, 1e9, 1e12, 1e15};
 
 /* GSL 2.7 as the referee, inside the moderate shapes where its distribution function holds. */
 START_TEST(moderate_shapes_agree_with_gsl) {
@@ -223,17 +226,20 @@ START_TEST(tails_are_mirror_images) {
         for (int k = 0; k <= 64; k++) {
             double b = grid[j], x = k / 64.0;
             tails here = tails_at(a, b, x), mirror = tails_at(b, a, 1 - x);
-            bool same = fabs(here.below - mirror.above) <= 1e-12 * here.below && fabs(here.above - mirror.below) <= 1e-12 * here.above;
+            bool below_same = fabs(here.below - mirror.above) <= 1e-12 * here.below;
+            bool above_same = fabs(here.above - mirror.below) <= 1e-12 * here.above;
             bool whole = fabs(here.below + here.above - 1) <= 4 * DBL_EPSILON;
-            if (!same || !whole) ck_abort_msg("a = %g, b = %g, x = %g: %.17g, %.17g", a, b, x, here.below, here.above);
+            if (!below_same || !above_same || !whole)
+                ck_abort_msg("a = %g, b = %g, x = %g: %.17g, %.17g", a, b, x, here.below, here.above);
         }
 }
 END_TEST
 
-static const double probabilities[] = {1e-300, 1e-30, 1e-12, 1e-6, 0.005, 0.025, 0.05, 0.3, 0.499999, 0.5, 0.6, 0.95, 0.975, 0.995, 1 - 1e-12};
+static const double probabilities[] = {1e-300, 1e-30, 1e-12, 1e-6, 0.005, 0.025, 0.05,     0.3,
+                                       0.499999, 0.5, 0.6,   0.95, 0.975, 0.995, 1 - 1e-12};
 
-/* The distribution function is on the right sides of p where x is 1e-10 (and a step of the doubles) lower and higher; and
- * quantiles rise with p. */
+/* The distribution function is on the right sides of p where x is 1e-10 (and a step of the doubles) lower and higher;
+ * and quantiles rise with p. */
 START_TEST(quantiles_undo_the_distribution_function) {
     const double a = grid[_i];
     for (size_t j = 0; j < LENGTH(grid); j++) {
@@ -287,9 +293,10 @@ START_TEST(limits_that_reach_the_ends) {
 END_TEST
 
 START_TEST(what_is_refused_is_left_alone) {
-    const double outside[][3] = {{0, 1, 0.5},    {1, 0, 0.5},        {-1, 1, 0.5},       {1, -2, 0.5},    {NAN, 1, 0.5}, {1, NAN, 0.5},
-                                 {1, 1, NAN},    {INFINITY, 1, 0.5}, {1, INFINITY, 0.5}, {1, 1, -0.01},   {1, 1, 1.01},  {1e17, 1, 0.5},
-                                 {1, 1e17, 0.5}, {1e-301, 1, 0.5},   {1, 1, INFINITY},   {1, 1, -INFINITY}};
+    const double outside[][3] = {{0, 1, 0.5},     {1, 0, 0.5},      {-1, 1, 0.5},       {1, -2, 0.5},
+                                 {NAN, 1, 0.5},   {1, NAN, 0.5},    {INFINITY, 1, 0.5}, {1, INFINITY, 0.5},
+                                 {1e17, 1, 0.5},  {1, 1e17, 0.5},   {1e-301, 1, 0.5},   {1, 1, NAN},
+                                 {1, 1, -0.01},   {1, 1, 1.01},     {1, 1, INFINITY},   {1, 1, -INFINITY}};
     double x = 7, lower = 8, upper = 9;
     for (size_t i = 0; i < LENGTH(outside); i++) {
         ck_assert(!bali_beta_cdf(outside[i][0], outside[i][1], outside[i][2], &lower, &upper));

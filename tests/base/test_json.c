@@ -123,7 +123,8 @@ static void build(bali_json *json, unsigned *chance, const char *key, int depth)
     *chance = *chance * 1103515245u + 12345u;
     unsigned kind = *chance >> 16 & 7, n = *chance >> 20 & 3;
     char bytes[8];
-    (void)snprintf(bytes, sizeof bytes, "%c%c%c", (int)(1 + (*chance >> 8) % 255), (int)(1 + (*chance >> 12) % 127), (int)(1 + (*chance >> 16) % 255));
+    (void)snprintf(bytes, sizeof bytes, "%c%c%c", (int)(1 + (*chance >> 8) % 255), (int)(1 + (*chance >> 12) % 127),
+                   (int)(1 + (*chance >> 16) % 255));
     if (kind < 4 && depth < 10) {
         bool object = kind < 2;
         if (object) bali_json_object(json, key);

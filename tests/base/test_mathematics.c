@@ -15,7 +15,8 @@ START_TEST(log_pochhammer_agrees_with_many_digits) {
     for (size_t i = 0; i < LENGTH(log_pochhammer_values); i++) {
         const double *row = log_pochhammer_values[i];
         double got = bali_log_pochhammer(row[0], row[1]);
-        ck_assert_msg(near(got, row[2], 64 * DBL_EPSILON), "ln (%.17g)_%.17g = %.17g, not %.17g", row[0], row[1], got, row[2]);
+        if (!near(got, row[2], 64 * DBL_EPSILON))
+            ck_abort_msg("ln (%.17g)_%.17g = %.17g, not %.17g", row[0], row[1], got, row[2]);
     }
 }
 END_TEST
@@ -34,7 +35,7 @@ START_TEST(log_pochhammer_keeps_its_digits_for_small_n) {
 END_TEST
 
 /* Abramowitz M, Stegun IA (1964) Handbook of Mathematical Functions, 6.1.8-6.1.14, Tables 6.1 and 6.3; the values are
- * recalled from memory. Gamma(z) is exp(-ln (z)_(1-z)) for z < 1, as Gamma(1) = 1; printed digits are cut, not rounded. */
+ * recalled from memory. For z < 1, Gamma(z) is exp(-ln (z)_(1-z)), as Gamma(1) = 1. Its digits are cut, not rounded. */
 static const struct {
     double a, n, sign, printed, unit;
 } handbook_gamma[] = {
@@ -72,7 +73,7 @@ START_TEST(whole_steps_are_sums_of_logarithms) {
     for (int n = 1; n <= 3000; n++) {
         bali_sum_add(&twin, log(a + (n - 1)));
         double got = bali_log_pochhammer(a, n), want = bali_sum_value(&twin);
-        ck_assert_msg(near(got, want, 64 * DBL_EPSILON), "ln (%g)_%d = %.17g, not %.17g", a, n, got, want);
+        if (!near(got, want, 64 * DBL_EPSILON)) ck_abort_msg("ln (%g)_%d = %.17g, not %.17g", a, n, got, want);
     }
 }
 END_TEST
@@ -81,6 +82,7 @@ END_TEST
 START_TEST(rises_follow_one_another) {
     const double steps[] = {0x1p-20, 0.25, 0.75, 1, 2, 5.5, 9, 16, 17, 40.125, 1000, 123456.5, 1e9};
     const double starts[] = {0x1p-30, 0x1p-10, 0.5, 1, 2.25, 7.5, 10, 99.75, 0x1p20, 0x1p30};
+    size_t met = 0;
     for (size_t i = 0; i < LENGTH(starts); i++)
         for (size_t j = 0; j < LENGTH(steps); j++)
             for (size_t k = 0; k < LENGTH(steps); k++) {
@@ -88,15 +90,19 @@ START_TEST(rises_follow_one_another) {
                 if (a + m - m != a || m + n - n != m) continue;
                 double whole = bali_log_pochhammer(a, m + n);
                 double parts = bali_log_pochhammer(a, m) + bali_log_pochhammer(a + m, n);
-                ck_assert_msg(near(parts, whole, 128 * DBL_EPSILON), "a = %g, m = %g, n = %g: %.17g, %.17g", a, m, n, parts, whole);
+                if (!near(parts, whole, 128 * DBL_EPSILON))
+                    ck_abort_msg("a = %g, m = %g, n = %g: %.17g, %.17g", a, m, n, parts, whole);
+                met++;
             }
+    ck_assert_uint_ge(met, 1000);
 }
 END_TEST
 
 START_TEST(log_pochhammer_has_its_domain) {
     const double outside[][2] = {{0, 1},   {-1, 1},  {NAN, 1},       {1, NAN},       {1, -1},
                                  {1, -0.5}, {-2.5, 3}, {INFINITY, 1}, {1, INFINITY}, {-INFINITY, 1}};
-    for (size_t i = 0; i < LENGTH(outside); i++) ck_assert_double_nan(bali_log_pochhammer(outside[i][0], outside[i][1]));
+    for (size_t i = 0; i < LENGTH(outside); i++)
+        ck_assert_double_nan(bali_log_pochhammer(outside[i][0], outside[i][1]));
     ck_assert_double_eq(bali_log_pochhammer(0.3, 0), 0);
     ck_assert_double_eq(bali_log_pochhammer(1e12, 0), 0);
     ck_assert_double_eq(bali_log_pochhammer(1, 1), 0);
@@ -115,7 +121,8 @@ START_TEST(small_functions_agree_with_many_digits) {
     }
     for (size_t i = 0; i < LENGTH(log_gamma_star_values); i++) {
         const double *row = log_gamma_star_values[i];
-        ck_assert_double_le(fabs(bali_log_gamma_star(row[0]) - row[1]), fmin(4 * DBL_EPSILON, 64 * DBL_EPSILON * row[1]));
+        double tolerance = fmin(4, 64 * row[1]) * DBL_EPSILON;
+        ck_assert_double_le(fabs(bali_log_gamma_star(row[0]) - row[1]), tolerance);
     }
     for (size_t i = 0; i < LENGTH(normal_quantile_values); i++) {
         const double *row = normal_quantile_values[i];

@@ -108,7 +108,8 @@ END_TEST
 /* Sizes around the buffer's 64 KiB, written in pieces. */
 static const struct {
     size_t size, piece;
-} amounts[] = {{0, 1}, {1, 1}, {65535, 65535}, {65536, 65536}, {65537, 65537}, {65537, 1000}, {200000, 7}, {200000, 65536}, {200000, 100000}};
+} amounts[] = {{0, 1},        {1, 1},      {65535, 65535},  {65536, 65536},  {65537, 65537},
+               {65537, 1000}, {200000, 7}, {200000, 65536}, {200000, 100000}};
 
 START_TEST(any_amount_arrives_whole) {
     static char bytes[200000];
@@ -486,7 +487,9 @@ START_TEST(two_processes_leave_one_complete_file) {
         if (children[c] != 0) continue;
         memset(bytes, 'a' + c, sizeof bytes);
         for (int i = 0; i < TIMES; i++)
-            if (bali_output_write_whole(name, bytes, sizeof bytes, NULL) != BAL_OK || (i % 8 == 0 && unlink(name) != 0 && errno != ENOENT)) _exit(1);
+            if (bali_output_write_whole(name, bytes, sizeof bytes, NULL) != BAL_OK ||
+                (i % 8 == 0 && unlink(name) != 0 && errno != ENOENT))
+                _exit(1);
         _exit(0);
     }
     for (int c = 0; c < 2; c++) {

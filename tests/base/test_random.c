@@ -30,8 +30,9 @@ static uint64_t plain_next(uint64_t *state) {
 }
 
 /* Seed 1234567 of SplitMix64 (Steele, Lea & Flood, OOPSLA 2014), as generally published; recalled from memory. */
-static const uint64_t published[] = {UINT64_C(6457827717110365317), UINT64_C(3203168211198807973), UINT64_C(9817491932198370423),
-                                     UINT64_C(4593380528125082431), UINT64_C(16408922859458223821)};
+static const uint64_t published[] = {UINT64_C(6457827717110365317), UINT64_C(3203168211198807973),
+                                     UINT64_C(9817491932198370423), UINT64_C(4593380528125082431),
+                                     UINT64_C(16408922859458223821)};
 
 START_TEST(the_twin_gives_the_published_sequence) {
     uint64_t state = 1234567;
@@ -39,9 +40,10 @@ START_TEST(the_twin_gives_the_published_sequence) {
 }
 END_TEST
 
-static const uint64_t keys[] = {0, 1, 2, 1234567, UINT64_C(0x9E3779B97F4A7C15), UINT64_C(0x61C8864680B583EB), UINT64_MAX};
+static const uint64_t keys[] = {
+    0, 1, 2, 1234567, UINT64_C(0x9E3779B97F4A7C15), UINT64_C(0x61C8864680B583EB), UINT64_MAX};
 
-/* Number i of key s is output i of the plain generator that starts from the first plain output of s, and so on for ever. */
+/* Number i of key s is output i of the plain generator whose seed is the first output of the plain generator for s. */
 START_TEST(a_stream_is_the_plain_generator_reseeded) {
     uint64_t seed = keys[_i], state = plain_next(&seed);
     for (uint64_t i = 0; i < 1000; i++) ck_assert_uint_eq(bali_splitmix64(keys[_i], i), plain_next(&state));

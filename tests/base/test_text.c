@@ -115,7 +115,8 @@ START_TEST(every_character_decodes) {
         bool valid = c <= 0x10FFFF && !(c >= 0xD800 && c <= 0xDFFF);
         uint32_t decoded = 0;
         size_t size = bali_utf8_next(bytes, length, &decoded);
-        if (size != (valid ? length : 0) || (valid && decoded != c)) ck_abort_msg("U+%04X: %zu bytes, U+%04X", (unsigned)c, size, (unsigned)decoded);
+        if (size != (valid ? length : 0) || (valid && decoded != c))
+            ck_abort_msg("U+%04X: %zu bytes, U+%04X", (unsigned)c, size, (unsigned)decoded);
         if (length > 1 && bali_utf8_next(bytes, length - 1, &decoded) != 0) ck_abort_msg("U+%04X cut short was taken", (unsigned)c);
     }
 }
@@ -159,10 +160,13 @@ END_TEST
 
 START_TEST(controls_are_known) {
     /* Unicode's Cc, and its Bidi_Control list (recalled from memory: 061C 200E 200F 202A-202E 2066-2069). */
-    static const uint32_t controls[] = {0, 9, 10, 13, 27, 31, 127, 128, 0x9B, 159, 0x61C, 0x200E, 0x200F, 0x2028, 0x2029, 0x202A, 0x202E, 0x2066, 0x2069, 0xFEFF};
+    static const uint32_t controls[] = {0,      9,      10,     13,     27,     31,     127,    128,    0x9B,   159,
+                                        0x61C,  0x200E, 0x200F, 0x2028, 0x2029, 0x202A, 0x202E, 0x2066, 0x2069, 0xFEFF};
     static const uint32_t others[] = {32, 'a', 126, 160, 0xE9, 0x61B, 0x200D, 0x2010, 0x202F, 0x2065, 0x206A, 0xFFFD, 0x1F600};
-    for (size_t i = 0; i < sizeof controls / sizeof controls[0]; i++) ck_assert_msg(bali_is_control(controls[i]), "U+%04X", (unsigned)controls[i]);
-    for (size_t i = 0; i < sizeof others / sizeof others[0]; i++) ck_assert_msg(!bali_is_control(others[i]), "U+%04X", (unsigned)others[i]);
+    for (size_t i = 0; i < sizeof controls / sizeof controls[0]; i++)
+        ck_assert_msg(bali_is_control(controls[i]), "U+%04X", (unsigned)controls[i]);
+    for (size_t i = 0; i < sizeof others / sizeof others[0]; i++)
+        ck_assert_msg(!bali_is_control(others[i]), "U+%04X", (unsigned)others[i]);
 }
 END_TEST
 

@@ -87,6 +87,7 @@ class ProgramTest(unittest.TestCase):
         for stream in ("stdout", "stderr"):
             how.setdefault(stream, subprocess.PIPE)
         how.setdefault("stdin", subprocess.DEVNULL)
+        how.setdefault("bufsize", 0)
         return subprocess.Popen([self.program, *words], env=dict(ENVIRONMENT, **(environment or {})), **how)
 
     def ballast(self, *words, status=0, input=None, **how):

@@ -49,7 +49,7 @@ class Options(ProgramTest):
     def test_ends_of_ranges(self):
         for command, option, low, has_low, high, has_high in self.ranges():
             tries = [(low, has_low), (high, has_high)]
-            if "." not in high and "e" not in high:
+            if has_high and "." not in high and "e" not in high:
                 tries += [(str(int(high) + 1), False), (str(int(high) - 1), True)]
             for value, accepted in tries:
                 value = "%d" % float(value) if "e+" in value else value
@@ -70,7 +70,7 @@ class Options(ProgramTest):
             self.assert_error(done, "bad-value", "--" + option.name)
 
     def test_option_twice(self):
-        values = {"prior": "k2", "estimate": "ml", "missing": "drop", "table-order": "for-slowest", "level": "0.5"}
+        values = {"prior": "k2", "estimate": "ml", "missing": "drop", "table-order": "for-slowest", "level": "0.5", "prior-floor": "0.5"}
         for command, option in self.each():
             words = option.words(values.get(option.name, "1")) * 2
             arguments = [word for word in ARGUMENTS[command] if word == "missing.xml"]

@@ -33,7 +33,8 @@ def can_mount():
 def run_on_mount(bench, command, prepare):
     """Runs a command in a mount namespace where `prepare` has made its folder $D, and looks at what the folder holds then."""
     folder, kept = bench.folder(command, False), bench.folder(command, False)
-    script = f"set -e; D='{folder}'; K='{kept}'; {prepare}\n" + 'set +e; "$@"; s=$?; cp -p "$D"/* "$D"/.ballast-* "$K"/ 2>/dev/null; exit $s'
+    script = (f"set -e; D='{folder}'; K='{kept}'; {prepare}\n"
+              'set +e; "$@"; s=$?; cp -p "$D"/* "$D"/.ballast-* "$K"/ 2>/dev/null; exit $s')
     done = subprocess.run(can_mount() + ["sh", "-c", script, "sh"] + bench.words(command, folder), capture_output=True,
                           stdin=subprocess.DEVNULL, timeout=60, env=dict(os.environ, LC_ALL="C"))
     files = {p.name: p.read_bytes() for p in kept.iterdir() if p.name != "filler"}
@@ -111,12 +112,11 @@ def limits(bench, command, wanted):
 
 def permissions(bench, command, wanted):
     """As an ordinary user, since root may do anything."""
-    reachable = os.geteuid() != 0 or subprocess.run(
-        ["setpriv", "--reuid=65534", "--regid=65534", "--clear-groups", "test", "-x", command.words[0]], capture_output=True).returncode == 0
-    if not reachable:
+    as_user = ["setpriv", "--reuid=65534", "--regid=65534", "--clear-groups"] if os.geteuid() == 0 else []
+    can_be_one = not as_user or shutil.which("setpriv")
+    if not can_be_one or subprocess.run(as_user + ["test", "-x", command.words[0]], capture_output=True).returncode != 0:
         bench.skip(f"{command.name}: permissions", "an ordinary user cannot reach the program, or there is no setpriv")
         return
-    as_user = ["setpriv", "--reuid=65534", "--regid=65534", "--clear-groups"] if os.geteuid() == 0 else []
     for what, folder_mode, file_mode, statuses in (("a read-only folder", 0o555, 0o666, {3}), ("read-only files", 0o777, 0o444, {3}),
                                                    ("files of somebody else that may be written", 0o777, 0o666, {0})):
         folder = bench.folder(command)

@@ -537,6 +537,7 @@ static Suite *suite(void) {
     tcase_add_test(files, large_files_are_not_hashed);
     tcase_add_test(files, memory_may_run_out_anywhere);
     tcase_add_test(files, a_line_is_split_outside_quotes);
+    tcase_set_timeout(cells, 60);
     suite_add_tcase(suite, cells);
     suite_add_tcase(suite, files);
     return suite;

@@ -14,6 +14,19 @@ START_TEST(pieces_are_put_together) {
 }
 END_TEST
 
+START_TEST(counts_have_commas_between_thousands) {
+    static const struct {
+        uint64_t count;
+        const char *text;
+    } cases[] = {{0, "0"}, {999, "999"}, {1000, "1,000"}, {1234567, "1,234,567"}, {UINT64_MAX, "18,446,744,073,709,551,615"}};
+    for (size_t i = 0; i < sizeof cases / sizeof cases[0]; i++) {
+        bali_phrase phrase = {0};
+        bali_phrase_count(&phrase, cases[i].count);
+        ck_assert_str_eq(phrase.text, cases[i].text);
+    }
+}
+END_TEST
+
 START_TEST(long_texts_are_cut_at_a_character) {
     char text[200];
     for (size_t i = 0; i < sizeof text; i += 2) memcpy(text + i, "\xC3\xA9", 2);
@@ -48,6 +61,7 @@ static Suite *suite(void) {
     Suite *suite = suite_create("phrase");
     TCase *tests = tcase_create("phrase");
     tcase_add_test(tests, pieces_are_put_together);
+    tcase_add_test(tests, counts_have_commas_between_thousands);
     tcase_add_test(tests, long_texts_are_cut_at_a_character);
     tcase_add_test(tests, what_does_not_fit_is_cut_at_a_character);
     suite_add_tcase(suite, tests);

@@ -1,8 +1,7 @@
 """Slow, obvious arithmetic with many digits, the referee of src/base/mathematics.c and src/base/beta.c.
 
-Nothing here shares a formula with the code it judges, save that both know Euler's gamma function: the distribution
-function is the continued fraction DLMF 8.17.22 in its uncontracted form, checked by check_tails() against mpmath's own
-hypergeometric series where that is feasible and against mpmath's quadrature elsewhere.
+The distribution function is the continued fraction DLMF 8.17.22, uncontracted; check_tails() holds it against mpmath's
+own hypergeometric series where that is feasible and against its quadrature elsewhere. Gamma functions are mpmath's.
 """
 from mpmath import mp, mpf
 

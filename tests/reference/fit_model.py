@@ -393,7 +393,7 @@ class Quantile:
             guess = special.betaincinv(a, b, p)
         if guess > 0 and abs(x - guess) <= relative * guess:
             return True
-        return _below(a, b, mpf(x) * (1 - mpf(relative)), p) and _above(a, b, mpf(x) * (1 + mpf(relative)) + mpf(5e-324), p)
+        return _below(a, b, mpf(x) * (1 - mpf(relative)) - mpf(5e-324), p) and _above(a, b, mpf(x) * (1 + mpf(relative)) + mpf(5e-324), p)
 
     def __repr__(self):
         return "the %.17g quantile of Beta(%.17g, %.17g)" % (self.key[2], self.key[0], self.key[1])

@@ -13,12 +13,14 @@ static bool answer_log_pochhammer(const double *x) {
 
 static bool answer_beta_cdf(const double *x) {
     double lower, upper;
-    return bali_beta_cdf(x[0], x[1], x[2], &lower, &upper) ? printf("%.17g %.17g\n", lower, upper) > 0 : puts("refused") >= 0;
+    if (!bali_beta_cdf(x[0], x[1], x[2], &lower, &upper)) return puts("refused") >= 0;
+    return printf("%.17g %.17g\n", lower, upper) > 0;
 }
 
 static bool answer_beta_quantile(const double *x) {
     double quantile;
-    return bali_beta_quantile(x[0], x[1], x[2], &quantile) ? printf("%.17g\n", quantile) > 0 : puts("refused") >= 0;
+    if (!bali_beta_quantile(x[0], x[1], x[2], &quantile)) return puts("refused") >= 0;
+    return printf("%.17g\n", quantile) > 0;
 }
 
 static const struct {

@@ -19,8 +19,8 @@ SHAPES = (1e-6, 1e-3, 0.1, 0.5, 1.0, 2.5, 17.0, 438.0, 9999.0, 1e4, 1e6, 1e9)
 def write_header(folder, file_name, arrays):
     guard = "BASE_" + file_name.replace(".", "_").upper()
     with open(os.path.join(folder, file_name), "w") as header:
-        header.write("/* Made by tests/reference/mathematics_values.py with mpmath, 60 digits rounded once; do not edit. */\n")
-        header.write("#ifndef %s\n#define %s\n" % (guard, guard))
+        header.write("/* Made by tests/reference/mathematics_values.py from 60 digits of mpmath; do not edit. */\n"
+                     "#ifndef %s\n#define %s\n" % (guard, guard))
         for name, columns, comment, rows in arrays:
             header.write("\n/* %s */\nstatic const double %s[][%d] = {\n" % (comment, name, columns))
             for row in rows:
@@ -30,9 +30,10 @@ def write_header(folder, file_name, arrays):
 
 
 def pochhammer_rows():
-    starts = (1e-9, 1e-6, 1e-3, 0.1, 0.5, 0.618, 0.6180339887498949, 1.0, 1.4616321449683623, 2.0, 3.3, 9.999, 10.0, 17.25,
-              1e3, 1e6, 1e9, 1e12)
-    steps = (2.0 ** -32, 1e-9, 0.25, 0.5, 1.0, 2.0, 2.5, 3.0, 7.0, 12.25, 16.0, 17.0, 100.0, 999.75, 1e4, 1e6, 1e9 - 0.5, 1e9)
+    starts = (1e-9, 1e-6, 1e-3, 0.1, 0.5, 0.618, 0.6180339887498949, 1.0, 1.4616321449683623, 2.0, 3.3, 9.999, 10.0,
+              17.25, 1e3, 1e6, 1e9, 1e12)
+    steps = (2.0 ** -32, 1e-9, 0.25, 0.5, 1.0, 2.0, 2.5, 3.0, 7.0, 12.25, 16.0, 17.0, 100.0, 999.75, 1e4, 1e6,
+             1e9 - 0.5, 1e9)
     for a in starts:
         for n in steps:
             yield a, n, log_pochhammer(a, n)
@@ -79,7 +80,8 @@ def narrow_rows():
 
 
 def log1p_minus_rows():
-    for x in (-0.999999, -0.9, -0.5, -0.4999, -0.1, -1e-3, -1e-9, 0.0, 1e-300, 1e-12, 1e-5, 0.01, 0.3, 0.5, 1.0, 7.5, 1e9):
+    for x in (-0.999999, -0.9, -0.5, -0.4999, -0.1, -1e-3, -1e-9, 0.0, 1e-300, 1e-12, 1e-5, 0.01, 0.3, 0.5, 1.0, 7.5,
+              1e9):
         yield x, mp.log1p(mpf(x)) - mpf(x)
 
 
@@ -107,7 +109,7 @@ def main():
     write_header(folder, "beta_values.h", (
         ("beta_tail_values", 5, "a, b, x, I_x(a, b), 1 - I_x(a, b)", tail_rows()),
         ("beta_quantile_values", 4, "a, b, p, the x with I_x(a, b) = p; 0 or 1 where that is nearest", quantile_rows()),
-        ("narrow_quantile_values", 4, "the same, tiny shapes at the probabilities where x leaves 0 and 1", narrow_rows())))
+        ("narrow_quantile_values", 4, "the same, tiny shapes where x leaves 0 and 1", narrow_rows())))
 
 
 if __name__ == "__main__":

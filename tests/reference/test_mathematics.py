@@ -4,7 +4,7 @@
 Run as: python3 -B test_mathematics.py DRIVER [SEED [POINTS]]      (ctest does; needs mpmath)
 
 The places are drawn from a seed, which is printed when something fails; another seed gives other places. A quantile is
-judged by how far the distribution function, in 50 digits, puts it from the true one, so no reference quantile is needed.
+judged by how far the distribution function, in 50 digits, puts it from the true one: no reference quantile is needed.
 """
 import math
 import random
@@ -39,8 +39,8 @@ def draw_probability(generator):
 
 def draw_pochhammer(generator):
     a = power(generator, -9, 12) if generator.random() < 0.6 else generator.uniform(0.001, 12)
-    n = generator.choice((float(generator.randint(0, 40)), float(math.floor(power(generator, 0, 9))), power(generator, -10, 9),
-                          generator.uniform(0, 30)))
+    n = generator.choice((float(generator.randint(0, 40)), float(math.floor(power(generator, 0, 9))),
+                          power(generator, -10, 9), generator.uniform(0, 30)))
     return a, n
 
 
@@ -48,8 +48,8 @@ def draw_tail(generator):
     a, b = draw_shape(generator), draw_shape(generator)
     mean = a / (a + b)
     deviation = math.sqrt(mean * (1 - mean) / (a + b + 1))
-    x = generator.choice((mean + generator.gauss(0, 3) * deviation, power(generator, -12, 0), 1 - power(generator, -12, 0),
-                          generator.random()))
+    x = generator.choice((mean + generator.gauss(0, 3) * deviation, power(generator, -12, 0),
+                          1 - power(generator, -12, 0), generator.random()))
     return (a, b, x) if 0 < x < 1 else (a, b, mean)
 
 
@@ -98,12 +98,15 @@ def quantile_error(arguments, answer):
     return abs(shift) / (mpf("1e-10") + step * mp.exp(abs(shift)) / min(x, y))
 
 
-SUBJECTS = (("log_pochhammer", draw_pochhammer, pochhammer_error, 3), ("beta_cdf", draw_tail, tail_error, 3),
-            ("beta_quantile", draw_quantile, quantile_error, 3), ("beta_quantile", draw_narrow_quantile, quantile_error, 1))
+SUBJECTS = (("log_pochhammer", draw_pochhammer, pochhammer_error, 3),
+            ("beta_cdf", draw_tail, tail_error, 3),
+            ("beta_quantile", draw_quantile, quantile_error, 3),
+            ("beta_quantile", draw_narrow_quantile, quantile_error, 1))
 
 
 def answers(driver, lines):
-    run = subprocess.run([driver], input="\n".join(lines) + "\n", capture_output=True, text=True, check=True, timeout=120)
+    questions = "\n".join(lines) + "\n"
+    run = subprocess.run([driver], input=questions, capture_output=True, text=True, check=True, timeout=120)
     found = run.stdout.splitlines()
     if len(found) != len(lines):
         raise RuntimeError("%d answers to %d questions" % (len(found), len(lines)))
