@@ -14,6 +14,7 @@ typedef struct bal_heldout_options {
     size_t folds;     /* 2 to BAL_HELDOUT_MOST_FOLDS; more folds than records leave some of them empty */
     uint64_t seed;
     unsigned threads; /* >= 1; changes no number */
+    size_t prediction_bytes; /* memory for the folds' predictions, 256 MiB; changes no number */
 } bal_heldout_options;
 BAL_API bal_heldout_options bal_heldout_options_defaults(void);
 
@@ -73,8 +74,8 @@ BAL_API uint64_t bal_fold_key(uint64_t seed, uint64_t repeat);
  * Fails:  ARGUMENT for folds out of range; DATA beyond BAL_HELDOUT_MOST_RECORDS; whatever the source meets;
  *         MEMORY; NUMERIC.
  * Cost:   two passes over the records, O(records x (variables + arcs)), and folds times the cost of settling the
- *         prior; 8 bytes a cell and fold for the folds' counts, and at most 256 MiB (or one fold's 40 bytes a cell, if
- *         that is more) for their predictions: where that is not enough for all folds, more passes.
+ *         prior; 8 bytes a cell and fold for the folds' counts, and at most prediction_bytes (or one fold's 48 bytes a
+ *         cell, if that is more) for their predictions: where that is not enough for all folds, more passes.
  * Source: the impossible/undefined/comparable split is direct; Brier 1950 for the quadratic score.
  */
 BAL_API BAL_MUST_CHECK bal_status bal_heldout_folds(const bal_prior *prior, const bal_cells *counts, bal_source *source,

@@ -100,13 +100,12 @@ double bali_log_pochhammer(double a, double n) {
 
 void bali_sum_add(bali_sum *sum, double term) {
     double total = sum->total + term;
-    if (isfinite(total)) /* the rounding of an infinite total would be a NaN */
-        sum->correction += fabs(sum->total) >= fabs(term) ? (sum->total - total) + term : (term - total) + sum->total;
+    sum->correction += fabs(sum->total) >= fabs(term) ? (sum->total - total) + term : (term - total) + sum->total;
     sum->total = total;
 }
 
 double bali_sum_value(const bali_sum *sum) {
-    return isfinite(sum->total) ? sum->total + sum->correction : sum->total;
+    return isfinite(sum->total) ? sum->total + sum->correction : sum->total; /* whose correction is a NaN */
 }
 
 void bali_moments_add(bali_moments *moments, double value) {

@@ -45,7 +45,7 @@ void bali_remarks_close(bali_remarks *remarks) {
         const bali_remark_kind *kind = &remarks->kinds[i];
         if (kind->n <= TOLD) continue;
         bal_error notice = {0};
-        (void)bal_error_set(&notice, BAL_OK, kind->code, "and %zu more warnings of this kind", kind->n - TOLD);
+        (void)bal_error_set(&notice, BAL_OK, "further-warnings", "and %zu more of [%s]", kind->n - TOLD, kind->code);
         bali_xml_place(remarks->xml, 0, &notice);
         notice.line = notice.column = 0;
         tell(remarks, &notice);

@@ -15,10 +15,8 @@
 
 #include <math.h>
 
-enum { PREDICTION_BYTES = 256 << 20 };
-
 bal_heldout_options bal_heldout_options_defaults(void) {
-    return (bal_heldout_options){.folds = 10, .seed = 1, .threads = 1};
+    return (bal_heldout_options){.folds = 10, .seed = 1, .threads = 1, .prediction_bytes = (size_t)256 << 20};
 }
 
 /* What one fold's records came to. */
@@ -97,6 +95,19 @@ static void count_folds(heldout *h, const bal_block *block) {
     }
 }
 
+/* The folds' counts have to make up the whole, or a training part would be something that never was. */
+static bal_status check_fold_counts(const heldout *h, bal_error *err) {
+    bal_cells *rest = NULL;
+    bal_status status = bal_cells_copy(h->counts, &rest, err);
+    for (size_t f = 0; f < h->n_folds && status == BAL_OK; f++) bali_cells_subtract(rest, h->fold_counts[f]);
+    for (size_t c = 0; c < bal_network_cells(h->network) && status == BAL_OK; c++)
+        if (bali_cells_values(rest)[c] != 0)
+            status = bal_error_set(err, BAL_ERR_DATA, "changed-while-read",
+                                   "the records are not those that were counted; leave the table alone while it is read, then start again");
+    bal_cells_free(rest);
+    return status;
+}
+
 /* One task: fits to everything but one fold. */
 static bal_status fit_without_fold(void *context, size_t task, bal_error *err) {
     heldout *h = context;
@@ -139,10 +150,7 @@ static void add_record(fold_scores *s, const record_outlook *record) {
     bali_moments_add(&s->quadratic_difference, record->quadratic_bayes - record->quadratic_ml);
     s->impossible += record->impossible;
     s->undefined += record->undefined && !record->impossible;
-    if (!isfinite(record->log_bayes)) { /* a structural zero: the total is minus infinity, and no mean exists */
-        s->bayes_impossible++;
-        return;
-    }
+    s->bayes_impossible += record->log_bayes == -INFINITY; /* a structural zero; it takes every sum it is in to minus infinity */
     bali_sum_add(&s->bayes, record->log_bayes);
     bali_sum_add(&s->prior, record->log_prior);
     if (record->impossible || record->undefined) {
@@ -177,9 +185,9 @@ static bal_status score_folds(heldout *h, unsigned threads, bal_error *err) {
     return status == BAL_OK ? visit_blocks(h, score_block, err) : status;
 }
 
-static bal_status score_all_folds(heldout *h, unsigned threads, bal_error *err) {
+static bal_status score_all_folds(heldout *h, const bal_heldout_options *options, bal_error *err) {
     size_t cells = bal_network_cells(h->network);
-    size_t at_once = PREDICTION_BYTES / (cells * sizeof *h->outlooks);
+    size_t at_once = options->prediction_bytes / (cells * sizeof *h->outlooks);
     if (at_once < 1) at_once = 1;
     if (at_once > h->n_folds) at_once = h->n_folds;
     h->outlooks = bali_allocate(at_once * cells, sizeof *h->outlooks);
@@ -187,14 +195,14 @@ static bal_status score_all_folds(heldout *h, unsigned threads, bal_error *err) 
     bal_status status = BAL_OK;
     for (h->first = 0; h->first < h->n_folds && status == BAL_OK; h->first = h->last) {
         h->last = h->n_folds - h->first < at_once ? h->n_folds : h->first + at_once;
-        status = score_folds(h, threads, err);
+        status = score_folds(h, options->threads, err);
     }
     return status;
 }
 
 static void join_sum(bali_sum *to, const bali_sum *from) {
     bali_sum_add(to, from->total);
-    bali_sum_add(to, from->correction);
+    if (isfinite(from->total)) bali_sum_add(to, from->correction); /* an infinite total has none */
 }
 
 static void join_folds(fold_scores *all, const fold_scores *s) {
@@ -219,13 +227,15 @@ static double mean(const bali_sum *sum, uint64_t n) {
     return n > 0 ? bali_sum_value(sum) / (double)n : NAN;
 }
 
+/* Where a record is impossible for Bayes the moments of the differences are lost, and the mean difference is minus infinity. */
 static bal_paired paired(const bali_sum *bayes, const bali_sum *ml, const bali_moments *difference, uint64_t n) {
-    return (bal_paired){mean(bayes, n), mean(ml, n), n > 0 ? difference->mean : NAN, bali_moments_standard_error(difference)};
+    bal_paired p = {mean(bayes, n), mean(ml, n), difference->mean, bali_moments_standard_error(difference)};
+    if (!isfinite(p.bayes)) p.mean_difference = p.bayes;
+    return p;
 }
 
 static void report_strengths(const heldout *h, bal_heldout *out) {
-    out->least_strength = INFINITY;
-    out->largest_strength = -INFINITY;
+    out->least_strength = out->largest_strength = NAN; /* which gives way to any number */
     for (size_t f = 0; f < h->n_folds; f++) {
         if (h->scores[f].records == 0) continue;
         out->least_strength = fmin(out->least_strength, h->strengths[f].value);
@@ -237,7 +247,7 @@ static void summarise(const heldout *h, bal_heldout *out) {
     fold_scores all = {0};
     for (size_t f = 0; f < h->n_folds; f++) join_folds(&all, &h->scores[f]);
     uint64_t others = all.impossible + all.undefined;
-    bool possible = all.bayes_impossible == 0;
+    double bayes = bali_sum_value(&all.bayes), ml = bali_sum_value(&all.ml_on_comparable);
     *out = (bal_heldout){
         .records = all.records,
         .incomplete = all.incomplete,
@@ -245,15 +255,14 @@ static void summarise(const heldout *h, bal_heldout *out) {
         .undefined = all.undefined,
         .comparable = all.records - others,
         .bayes_impossible = all.bayes_impossible,
-        .bayes_log_likelihood = possible ? bali_sum_value(&all.bayes) : -INFINITY,
-        .ml_log_likelihood = all.impossible ? -INFINITY : all.undefined ? NAN : bali_sum_value(&all.ml_on_comparable),
-        .prior_log_likelihood = possible ? bali_sum_value(&all.prior) : -INFINITY,
+        .bayes_log_likelihood = bayes,
+        .ml_log_likelihood = all.impossible ? -INFINITY : all.undefined ? NAN : ml,
+        .prior_log_likelihood = bali_sum_value(&all.prior),
         .on_comparable = paired(&all.bayes_on_comparable, &all.ml_on_comparable, &all.log_difference, all.comparable),
-        .bayes_on_others = possible ? mean(&all.bayes_on_others, others) : others ? -INFINITY : NAN,
+        .bayes_on_others = mean(&all.bayes_on_others, others),
+        .break_even = others > 0 ? (bayes - ml) / (double)others : NAN,
         .quadratic = paired(&all.quadratic_bayes, &all.quadratic_ml, &all.quadratic_difference, all.records),
     };
-    double bayes = bali_sum_value(&all.bayes), ml = bali_sum_value(&all.ml_on_comparable);
-    out->break_even = others == 0 ? NAN : possible ? (bayes - ml) / (double)others : -INFINITY;
     report_strengths(h, out);
 }
 
@@ -302,7 +311,8 @@ bal_status bal_heldout_folds(const bal_prior *prior, const bal_cells *counts, ba
                  .key = bal_fold_key(options->seed, 0)};
     status = make_folds(&h, err);
     if (status == BAL_OK) status = visit_blocks(&h, count_folds, err);
-    if (status == BAL_OK) status = score_all_folds(&h, options->threads, err);
+    if (status == BAL_OK) status = check_fold_counts(&h, err);
+    if (status == BAL_OK) status = score_all_folds(&h, options, err);
     if (status == BAL_OK) summarise(&h, out);
     free_folds(&h);
     return status;

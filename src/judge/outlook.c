@@ -27,7 +27,15 @@ static void fill_ml(const double *n, size_t r, bali_outlook *to) {
     }
 }
 
-/* post is alpha + n; alpha alone gives the prior's prediction. */
+/* alpha + n; a structural zero stays zero, whatever was counted there. */
+static void add_counts(const bal_cells *counts, bal_cells *post) {
+    const double *n = bali_cells_values(counts);
+    double *alpha = bali_cells_all(post);
+    for (size_t c = 0; c < bal_network_cells(bal_cells_network(post)); c++)
+        if (alpha[c] > 0) alpha[c] += n[c];
+}
+
+/* alpha alone gives the prior's prediction. */
 static void fill_bayes(const double *alpha, const double *post, size_t r, bali_outlook *to) {
     double alpha_total = bali_row_sum(alpha, r), total = bali_row_sum(post, r);
     double squares = sum_of_squares(post, r, total);
@@ -44,11 +52,11 @@ bal_status bali_outlook_fill(const bal_prior *prior, const bal_cells *training, 
     bal_cells *alpha = NULL, *post = NULL;
     bal_status status = bal_prior_settle(prior, training, strength, err);
     if (status == BAL_OK) status = bal_cells_create(network, &alpha, err);
-    if (status == BAL_OK) status = bal_cells_copy(training, &post, err);
+    if (status == BAL_OK) bal_prior_fill(prior, strength->value, alpha);
+    if (status == BAL_OK) status = bal_cells_copy(alpha, &post, err);
     if (status != BAL_OK) goto done;
 
-    bal_prior_fill(prior, strength->value, alpha);
-    bali_cells_add(post, alpha);
+    add_counts(training, post);
     for (size_t v = 0; v < bal_network_variables(network); v++) {
         size_t r = bal_network_outcomes(network, v), n_cells = bal_network_rows(network, v) * r;
         const double *a = bal_cells_family(alpha, v), *p = bal_cells_family(post, v), *n = bal_cells_family(training, v);

@@ -1,5 +1,6 @@
 #include "base/files.h"
 #include "base/memory.h"
+#include "base/scratch.h"
 #include "support/harness.h"
 
 #include <errno.h>
@@ -19,13 +20,6 @@ static char path[512], other[512];
 static const char *scratch_path(char *to, size_t size, const char *name) {
     (void)snprintf(to, size, "%s/%s", scratch_dir(), name);
     return to;
-}
-
-/* How many descriptors are open: no test may leave one behind. */
-static int open_descriptors(void) {
-    int n = 0;
-    for (int descriptor = 0; descriptor < 256; descriptor++) n += fcntl(descriptor, F_GETFD) >= 0;
-    return n;
 }
 
 static void pause_milliseconds(long milliseconds) {

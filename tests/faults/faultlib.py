@@ -65,7 +65,8 @@ class Result:
 class Bench:
     """A scratch folder with the inputs in it; counts what passed and what failed."""
 
-    def __init__(self, description):
+    def __init__(self, description, in_memory=False):
+        """in_memory: the scratch folder may lie in memory, where a sync takes no time."""
         parser = argparse.ArgumentParser(description=description)
         parser.add_argument("--shims", required=True, help="folder of the preloaded libraries and of the probe")
         parser.add_argument("--ballast", help="the program; without it only the probe is tried")
@@ -73,8 +74,11 @@ class Bench:
         parser.add_argument("--seconds", type=float, default=50, help="about how long to take")
         parser.add_argument("--full", action="store_true", help="every number of every fault, however long it takes")
         self.options = parser.parse_args()
+        self.options.shims = os.path.abspath(self.options.shims)
+        self.options.ballast = self.options.ballast and os.path.abspath(self.options.ballast)
         self.passed = self.failed = 0
-        self.scratch = pathlib.Path(tempfile.mkdtemp(prefix="ballast-faults-"))
+        memory = "/dev/shm" if in_memory and os.access("/dev/shm", os.W_OK) else None
+        self.scratch = pathlib.Path(tempfile.mkdtemp(prefix="ballast-faults-", dir=memory))
         self.scratch.chmod(0o755)
         self.inputs = {}
         for name, text in (("network", NETWORK), ("table", TABLE), ("bytes", "0123456789abcdef\n" * 40)):

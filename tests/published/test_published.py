@@ -3,9 +3,8 @@
 
 usage: test_published.py PROGRAM
 
-Each check names its source. The sources' figures are recalled from memory, as is the wording of their places; what was at
-hand to copy were the data of R's datasets package only. A tolerance is half a unit of the last printed place, or one
-unit where the recalled figure and the exact one differ by it, which is said there.
+Each check names its source. All published figures are recalled from memory. A tolerance is half a unit of the last printed place,
+or one unit where the recalled figure and the exact one differ by it, which is said there.
 """
 import math
 import os

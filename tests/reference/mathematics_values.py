@@ -14,6 +14,13 @@ from exact import check_tails, log_pochhammer, mp, mpf, quantile_as_double
 
 # The shapes: tiny, moderate, the Jeffreys and BDA examples, and the large ones, where other codes fail.
 SHAPES = (1e-6, 1e-3, 0.1, 0.5, 1.0, 2.5, 17.0, 438.0, 9999.0, 1e4, 1e6, 1e9)
+# a + b is not a double, and what is lost of it matters.
+ROUNDED_SUMS = ((912345678.0000001, 987654321.5), (987654321.5, 912345678.0000001),
+                (111.0625, 4567890123456789.0))
+# The quantile is a number below 1e-308.
+SUBNORMALS = ((6.8769815411782405e-06, 17942.981537008247, 0.995),
+              (0.0021355229500021784, 0.2093731274367873, 0.20214331221255005),
+              (3.445814002253613e-05, 93.83066320434209, 0.975))
 
 
 def write_header(folder, file_name, arrays):
@@ -30,8 +37,8 @@ def write_header(folder, file_name, arrays):
 
 
 def pochhammer_rows():
-    starts = (1e-9, 1e-6, 1e-3, 0.1, 0.5, 0.618, 0.6180339887498949, 1.0, 1.4616321449683623, 2.0, 3.3, 9.999, 10.0,
-              17.25, 1e3, 1e6, 1e9, 1e12)
+    starts = (1e-9, 1e-6, 1e-3, 0.1, 0.5, 0.618, 0.6180339887498949, 1.0, 1.4616321449683623, 2.0, 3.3, 9.999,
+              9.9999999999, 10.0, 17.25, 1e3, 1e6, 1e9, 1e12)
     steps = (2.0 ** -32, 1e-9, 0.25, 0.5, 1.0, 2.0, 2.5, 3.0, 7.0, 12.25, 16.0, 17.0, 100.0, 999.75, 1e4, 1e6,
              1e9 - 0.5, 1e9)
     for a in starts:
@@ -55,6 +62,10 @@ def tail_rows():
                 lower, upper = check_tails(a, b, mpf(x), 1 - mpf(x))
                 if min(lower, upper) > mpf(10) ** -300:
                     yield a, b, x, lower, upper
+    for a, b in ROUNDED_SUMS:
+        for x in tail_places(a, b)[1:]:
+            lower, upper = check_tails(a, b, mpf(x), 1 - mpf(x))
+            yield a, b, x, lower, upper
 
 
 def quantile_rows():
@@ -66,6 +77,11 @@ def quantile_rows():
         for b in SHAPES[::3]:
             for p in (1e-12, 0.005, 0.05, 1 - 1e-12):
                 yield a, b, p, quantile_as_double(a, b, p)
+    for a, b in ROUNDED_SUMS:
+        for p in (1e-12, 0.001, 0.975):
+            yield a, b, p, quantile_as_double(a, b, p)
+    for a, b, p in SUBNORMALS:
+        yield a, b, p, quantile_as_double(a, b, p)
 
 
 def narrow_rows():

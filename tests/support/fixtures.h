@@ -32,7 +32,7 @@ typedef struct fixture_table {
     size_t n_records;
     const uint64_t *places;  /* one a record, or NULL */
     size_t block_records;    /* 0 = 4096 */
-    size_t fail_at;          /* the fail_at-th block fails with IO; 0 = none does */
+    size_t fail_at;          /* the fail_at-th block, over all passes, fails with IO; 0 = none does */
     bool pipe;               /* cannot go back once a block was taken */
     bool weighted;           /* carries weights: 1 + the record's number */
     bool narrow;             /* columns of variable 0 are not there (NULL) */

@@ -1,0 +1,112 @@
+#include "ballast/judge.h"
+
+#include "support/fixtures.h"
+
+#include <stdlib.h>
+
+/* The rule again, from its words: splitmix64(s, i) = mix(mix(s + g) + (i + 1) g), g = 0x9E3779B97F4A7C15, mix the finaliser of Steele,
+ * Lea & Flood 2014. */
+static uint64_t own_mix(uint64_t z) {
+    z = (z ^ (z >> 30)) * 0xBF58476D1CE4E5B9u;
+    z = (z ^ (z >> 27)) * 0x94D049BB133111EBu;
+    return z ^ (z >> 31);
+}
+
+static uint64_t own_splitmix64(uint64_t s, uint64_t i) {
+    const uint64_t g = 0x9E3779B97F4A7C15u;
+    return own_mix(own_mix(s + g) + (i + 1) * g);
+}
+
+/* Of each run of K consecutive records b K ... b K + K - 1, record b K + t is in fold p[t], p the identity shuffled by: for t = K - 1 down
+ * to 1 swap p[t] and p[splitmix64(key, b K + t) mod (t + 1)]. */
+static size_t own_fold(uint64_t key, size_t n_folds, uint64_t record) {
+    uint64_t b = record / n_folds;
+    size_t *p = malloc(n_folds * sizeof *p);
+    ck_assert_ptr_nonnull(p);
+    for (size_t t = 0; t < n_folds; t++) p[t] = t;
+    for (size_t t = n_folds - 1; t >= 1; t--) {
+        size_t u = (size_t)(own_splitmix64(key, b * n_folds + t) % (t + 1)), held = p[t];
+        p[t] = p[u];
+        p[u] = held;
+    }
+    size_t fold = p[record % n_folds];
+    free(p);
+    return fold;
+}
+
+static const uint64_t seeds[] = {0, 1, 2, 12345, UINT64_MAX};
+static const size_t folds_tried[] = {2, 3, 10, 17, 100};
+enum { N_SEEDS = sizeof seeds / sizeof seeds[0], N_FOLDS = sizeof folds_tried / sizeof folds_tried[0] };
+
+START_TEST(the_key_is_of_purpose_1) {
+    for (size_t s = 0; s < N_SEEDS; s++)
+        for (uint64_t repeat = 0; repeat < 3; repeat++)
+            ck_assert_uint_eq(bal_fold_key(seeds[s], repeat), own_splitmix64(own_splitmix64(seeds[s], 1), repeat));
+}
+END_TEST
+
+START_TEST(folds_are_those_of_the_rule) {
+    size_t n_folds = folds_tried[_i], *folds = malloc(n_folds * sizeof *folds);
+    ck_assert_ptr_nonnull(folds);
+    for (size_t s = 0; s < N_SEEDS; s++) {
+        uint64_t key = bal_fold_key(seeds[s], 0);
+        for (uint64_t run = 0; run < 5; run++) {
+            bal_fold_run(key, run, n_folds, folds);
+            for (size_t t = 0; t < n_folds; t++) ck_assert_uint_eq(folds[t], own_fold(key, n_folds, run * n_folds + t));
+        }
+        bal_fold_run(key, (uint64_t)1 << 40, n_folds, folds);
+        ck_assert_uint_eq(folds[1], own_fold(key, n_folds, ((uint64_t)1 << 40) * n_folds + 1));
+    }
+    free(folds);
+}
+END_TEST
+
+START_TEST(folds_differ_in_size_by_at_most_one) {
+    size_t n_folds = folds_tried[_i], *folds = malloc(n_folds * sizeof *folds), *sizes = calloc(n_folds, sizeof *sizes);
+    ck_assert(folds && sizes);
+    uint64_t key = bal_fold_key(1, 0);
+    for (uint64_t record = 0; record < 537; record++) {
+        if (record % n_folds == 0) bal_fold_run(key, record / n_folds, n_folds, folds);
+        sizes[folds[record % n_folds]]++;
+        size_t least = SIZE_MAX, most = 0;
+        for (size_t f = 0; f < n_folds; f++) {
+            if (sizes[f] < least) least = sizes[f];
+            if (sizes[f] > most) most = sizes[f];
+        }
+        ck_assert_uint_le(most - least, 1);
+    }
+    free(folds);
+    free(sizes);
+}
+END_TEST
+
+/* A shuffle that preferred some place would give itself away over many runs. (K - 1)/K times the usual sum over the K x K places is
+ * chi-square with (K - 1)^2 degrees of freedom, since every run is a permutation; 39.34 is the 99.999 % point for 9 (Python's mpmath). */
+START_TEST(every_fold_is_as_likely_in_every_place) {
+    enum { K = 4, RUNS = 40000 };
+    size_t seen[K][K] = {{0}}, folds[K];
+    for (uint64_t run = 0; run < RUNS; run++) {
+        bal_fold_run(bal_fold_key(5, 0), run, K, folds);
+        for (size_t t = 0; t < K; t++) seen[t][folds[t]]++;
+    }
+    double chi_square = 0, expected = (double)RUNS / K;
+    for (size_t t = 0; t < K; t++)
+        for (size_t f = 0; f < K; f++) chi_square += ((double)seen[t][f] - expected) * ((double)seen[t][f] - expected) / expected;
+    ck_assert_msg(chi_square * (K - 1) / K < 39.34, "%g", chi_square);
+}
+END_TEST
+
+static Suite *suite(void) {
+    Suite *s = suite_create("folds");
+    TCase *c = tcase_create("folds");
+    tcase_add_test(c, the_key_is_of_purpose_1);
+    tcase_add_loop_test(c, folds_are_those_of_the_rule, 0, N_FOLDS);
+    tcase_add_loop_test(c, folds_differ_in_size_by_at_most_one, 0, N_FOLDS);
+    tcase_add_test(c, every_fold_is_as_likely_in_every_place);
+    suite_add_tcase(s, c);
+    return s;
+}
+
+int main(void) {
+    return run_suite(suite());
+}
