@@ -12,7 +12,8 @@ extern "C" {
  * A source of n_records simulated ones, drawn forwards through the network.
  *
  * Record i depends on the seed, i and the tables alone: with key = splitmix64(splitmix64(seed, 3), 0), variable v
- * of record i takes the uniform number splitmix64(splitmix64(key, i), v) / 2^64.
+ * of record i takes the uniform number u = (the upper 53 bits of splitmix64(splitmix64(key, i), v)) / 2^53, and is the first
+ * outcome of its row at which the sum of the probabilities, from the first outcome on, is above u.
  *
  * tables  one row a parent configuration, each summing to 1; copied
  *

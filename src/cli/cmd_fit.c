@@ -83,10 +83,10 @@ static void collect_facts(const bali_call *call, fit_work *w) {
 }
 
 /* Rows whose pseudo-counts sum to less than 1 and that meet records have intervals that are too narrow. */
-static void warn_of_thin_rows(const fit_work *w) {
+static bal_status warn_of_thin_rows(const fit_work *w, bal_error *err) {
     bali_row rows[THIN_ROWS_NAMED];
     size_t n = bali_list_thin_rows(w->fit, rows, THIN_ROWS_NAMED);
-    if (n == 0) return;
+    if (n == 0) return BAL_OK;
     bali_text names = {0};
     for (size_t i = 0; i < n && i < THIN_ROWS_NAMED; i++) {
         bali_text_puts(&names, i ? "; " : "");
@@ -99,8 +99,10 @@ static void warn_of_thin_rows(const fit_work *w) {
                         "be; rows: %s",
                         n, bali_text_string(&names));
     notice.status = BAL_OK;
-    w->inputs.notices.tell(w->inputs.notices.context, BAL_WARNING, &notice);
+    bool failed = names.failed;
+    if (!failed) w->inputs.notices.tell(w->inputs.notices.context, BAL_WARNING, &notice);
     bali_text_free(&names);
+    return failed ? bali_out_of_memory(err) : BAL_OK;
 }
 
 static bal_status write_fitted(fit_work *w, bal_error *err) {
@@ -126,10 +128,11 @@ static bal_status write_json(fit_work *w, bal_error *err) {
 }
 
 static bal_status deliver(fit_work *w, bali_text *page, bal_error *err) {
-    warn_of_thin_rows(w);
+    bal_status status = warn_of_thin_rows(w, err);
+    if (status != BAL_OK) return status;
     if (w->results.page) bali_fit_text(&w->facts, page);
     if (page->failed) return bali_out_of_memory(err);
-    bal_status status = write_fitted(w, err);
+    status = write_fitted(w, err);
     if (status == BAL_OK) status = write_json(w, err);
     return status == BAL_OK ? bali_results_commit(&w->results, err) : status;
 }

@@ -100,7 +100,7 @@ static bal_status step_line_end(bali_csv *csv, const char **p, bal_error *err) {
 
 /* The cell's text ended at p: steps over what separates it from the next. */
 static bal_status end_cell(bali_csv *csv, const char *p, bali_csv_cell *cell, bal_error *err) {
-    csv->cell_expected = p != csv->buffer.end && kind_at(csv, p) == DELIMITER;
+    csv->cell_expected = kind_at(csv, p) == DELIMITER;
     cell->ends_record = !csv->cell_expected;
     bal_status status = BAL_OK;
     if (csv->cell_expected) p++;

@@ -3,6 +3,7 @@
 
 #include "base/memory.h"
 #include "base/names.h"
+#include "base/text.h"
 #include "model/document.h"
 
 #include <stdarg.h>
@@ -10,14 +11,17 @@
 #include <string.h>
 
 bali_draft_variable *bali_draft_add_variable(bali_draft *draft, size_t at) {
-    if (!bali_grow((void **)&draft->variables, &draft->variable_capacity, draft->n_variables + 1, sizeof *draft->variables)) return NULL;
+    if (!bali_grow((void **)&draft->variables, &draft->variable_capacity, draft->n_variables + 1,
+                   sizeof *draft->variables))
+        return NULL;
     bali_draft_variable *variable = &draft->variables[draft->n_variables++];
     *variable = (bali_draft_variable){.at = at, .first_outcome = draft->outcomes.n};
     return variable;
 }
 
 bali_draft_definition *bali_draft_add_definition(bali_draft *draft, size_t at) {
-    if (!bali_grow((void **)&draft->definitions, &draft->definition_capacity, draft->n_definitions + 1, sizeof *draft->definitions))
+    if (!bali_grow((void **)&draft->definitions, &draft->definition_capacity, draft->n_definitions + 1,
+                   sizeof *draft->definitions))
         return NULL;
     bali_draft_definition *definition = &draft->definitions[draft->n_definitions++];
     *definition = (bali_draft_definition){.at = at, .first_parent = draft->parents.n};
@@ -76,6 +80,25 @@ bal_status bali_draft_fail(const bali_draft *draft, size_t at, const char *varia
     return status;
 }
 
+bal_status bali_draft_check_name(const bali_draft *draft, const char *what, const char *name, size_t length, size_t at,
+                                 const char *variable, bal_error *err) {
+    if (length == 0)
+        return bali_draft_fail(draft, at, variable, "empty-name", err, "an empty %s; write the name into it", what);
+    if (length > BAL_MAX_NAME_BYTES)
+        return bali_draft_fail(draft, at, variable, "long-name", err, "%s \"%.40s...\" has %zu bytes; use at most %zu",
+                               what, name, length, BAL_MAX_NAME_BYTES);
+    for (size_t i = 0; i < length;) {
+        uint32_t character = 0;
+        size_t size = bali_utf8_next(name + i, length - i, &character);
+        if (size == 0 || bali_is_control(character))
+            return bali_draft_fail(draft, at, variable, "control-character", err,
+                                   "%s \"%.*s\" holds the control character U+%04X; remove it", what, (int)length, name,
+                                   (unsigned)character);
+        i += size;
+    }
+    return BAL_OK;
+}
+
 /* What is built step by step; everything is freed at the end but the document. */
 typedef struct resolution {
     const bali_draft *draft;
@@ -97,19 +120,21 @@ static bal_status check_outcomes(const resolution *r, const bali_draft_variable 
     bali_names seen = {0};
     bal_status status = BAL_OK;
     if (variable->n_outcomes == 0)
-        return bali_draft_fail(r->draft, variable->at, name, "no-outcomes", err, "%s has no outcome; give it at least one", name);
+        return bali_draft_fail(r->draft, variable->at, name, "no-outcomes", err,
+                               "%s has no outcome; give it at least one", name);
     const bali_draft_text *outcomes = r->draft->outcomes.texts + variable->first_outcome;
     if (variable->n_outcomes > BAL_MAX_OUTCOMES)
         return bali_draft_fail(r->draft, outcomes[BAL_MAX_OUTCOMES].at, name, "too-many-outcomes", err,
-                               "%s has %zu outcomes; at most %zu are possible", name, variable->n_outcomes, BAL_MAX_OUTCOMES);
+                               "%s has %zu outcomes; at most %zu are possible", name, variable->n_outcomes,
+                               BAL_MAX_OUTCOMES);
     for (size_t k = 0; k < variable->n_outcomes && status == BAL_OK; k++) {
         size_t first;
         if (!bali_names_add(&seen, outcomes[k].text, &first)) {
             status = bali_out_of_memory(err);
         } else if (first != BALI_NO_NAME) {
             status = bali_draft_fail(r->draft, outcomes[k].at, name, "duplicate-outcome", err,
-                                     "outcome \"%s\" of %s stands twice, first on line %zu; rename or remove one", outcomes[k].text, name,
-                                     line(r, outcomes[first].at));
+                                     "outcome \"%s\" of %s stands twice, first on line %zu; rename or remove one",
+                                     outcomes[k].text, name, line(r, outcomes[first].at));
         }
     }
     bali_names_free(&seen);
@@ -123,7 +148,8 @@ static bal_status check_variables(resolution *r, bal_error *err) {
         const char *name = variable->name.text;
         size_t first;
         if (!name)
-            return bali_draft_fail(draft, variable->at, NULL, "empty-name", err, "a variable without a NAME; give it one");
+            return bali_draft_fail(draft, variable->at, NULL, "empty-name", err,
+                                   "a variable without a NAME; give it one");
         if (!bali_names_add(&r->variables, name, &first)) return bali_out_of_memory(err);
         if (first != BALI_NO_NAME)
             return bali_draft_fail(draft, variable->name.at, name, "duplicate-variable", err,
@@ -152,20 +178,21 @@ static bal_status create_domain(resolution *r, bal_error *err) {
 }
 
 /* The variable that a FOR or a GIVEN names. */
-static bal_status find(const resolution *r, const bali_draft_text *name, const char *what, const char *code, size_t *variable,
-                       bal_error *err) {
+static bal_status find(const resolution *r, const bali_draft_text *name, const char *what, const char *code,
+                       size_t *variable, bal_error *err) {
     *variable = bali_names_find(&r->variables, name->text, strlen(name->text));
     if (*variable != BALI_NO_NAME) return BAL_OK;
     size_t nearest = bali_nearest(name->text, strlen(name->text), r->variables.names, r->variables.n_names);
     if (nearest == BALI_NO_NAME)
-        return bali_draft_fail(r->draft, name->at, name->text, code, err, "%s \"%s\" is not a variable of this file; declare it as one",
-                               what, name->text);
+        return bali_draft_fail(r->draft, name->at, name->text, code, err,
+                               "%s \"%s\" is not a variable of this file; declare it as one", what, name->text);
     return bali_draft_fail(r->draft, name->at, name->text, code, err,
                            "%s \"%s\" is not a variable of this file; did you mean \"%s\"?", what, name->text,
                            r->variables.names[nearest]);
 }
 
-static bal_status resolve_parents(resolution *r, const bali_draft_definition *definition, size_t child, bal_error *err) {
+static bal_status resolve_parents(resolution *r, const bali_draft_definition *definition, size_t child,
+                                  bal_error *err) {
     const bali_draft *draft = r->draft;
     if (definition->n_parents == 0) return BAL_OK;
     size_t *parents = bali_allocate(definition->n_parents, sizeof *parents);
@@ -188,7 +215,8 @@ static bal_status resolve_parents(resolution *r, const bali_draft_definition *de
                                      line(r, texts[first].at));
         } else if (parents[p] == child) {
             status = bali_draft_fail(draft, parent->at, name, "cycle", err,
-                                     "the arcs run in a circle: %s -> %s; a variable cannot be its own parent", name, name);
+                                     "the arcs run in a circle: %s -> %s; a variable cannot be its own parent", name,
+                                     name);
         }
     }
     bali_names_free(&seen);
@@ -205,7 +233,8 @@ static bal_status resolve_definitions(resolution *r, bal_error *err) {
         const bali_draft_definition *definition = &draft->definitions[d];
         const bali_draft_text *name = &definition->child;
         if (!name->text)
-            return bali_draft_fail(draft, definition->at, NULL, "no-definition-for", err, "a DEFINITION without FOR; say which variable it is of");
+            return bali_draft_fail(draft, definition->at, NULL, "no-definition-for", err,
+                                   "a DEFINITION without FOR; say which variable it is of");
         size_t child;
         bal_status status = find(r, name, "FOR", "unknown-variable", &child, err);
         if (status != BAL_OK) return status;
@@ -239,7 +268,9 @@ static bal_status add_properties(const resolution *r, bal_error *err) {
     bal_status status = BAL_OK;
     for (size_t i = 0; i < r->draft->n_properties && status == BAL_OK; i++) {
         const bali_draft_property *p = &r->draft->properties[i];
-        size_t variable = p->of == BAL_OF_NETWORK ? BAL_NONE : p->of == BAL_OF_VARIABLE ? p->owner : r->child_of[p->owner];
+        size_t variable = p->of == BAL_OF_NETWORK    ? BAL_NONE
+                          : p->of == BAL_OF_VARIABLE ? p->owner
+                                                     : r->child_of[p->owner];
         status = bali_document_add_property(r->document, p->of, variable, p->text, p->length, err);
     }
     return status;
@@ -256,8 +287,8 @@ static void free_resolution(resolution *r) {
     bal_domain_free(r->domain);
 }
 
-bal_status bali_draft_resolve(const bali_draft *draft, const bal_network_options *options, bali_remarks *remarks, bal_document **out,
-                              bal_error *err) {
+bal_status bali_draft_resolve(const bali_draft *draft, const bal_network_options *options, bali_remarks *remarks,
+                              bal_document **out, bal_error *err) {
     *out = NULL;
     resolution r = {.draft = draft};
     bal_status status = BAL_OK;
@@ -268,7 +299,8 @@ bal_status bali_draft_resolve(const bali_draft *draft, const bal_network_options
     if (status == BAL_OK) status = resolve_definitions(&r, err);
     if (status == BAL_OK) status = create_network(&r, options->max_cells, err);
     if (status == BAL_OK) status = bal_document_create(r.network, draft->name.text, &r.document, err);
-    if (status == BAL_OK) status = bali_draft_fill(draft, r.definition_of, options->for_slowest, remarks, r.document, err);
+    if (status == BAL_OK)
+        status = bali_draft_fill(draft, r.definition_of, options->for_slowest, remarks, r.document, err);
     if (status == BAL_OK) status = add_properties(&r, err);
     if (status == BAL_OK) {
         *out = r.document;

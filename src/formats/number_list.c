@@ -26,9 +26,10 @@ size_t bali_number_at(bali_xml *xml, const bali_number_list *list, size_t i) {
 }
 
 /* The number at hand cannot be: says so where it stands. */
-static bal_status refuse(const bali_number_reader *reader, const char *word, size_t length, const char *what, bal_error *err) {
-    bal_status status = bal_error_set(err, BAL_ERR_DATA, "bad-number", "\"%.*s\"%s %s", (int)(length < SHOWN ? length : SHOWN), word,
-                                      length < SHOWN ? "" : "...", what);
+static bal_status refuse(const bali_number_reader *reader, const char *word, size_t length, const char *what,
+                         bal_error *err) {
+    bal_status status = bal_error_set(err, BAL_ERR_DATA, "bad-number", "\"%.*s\"%s %s",
+                                      (int)(length < SHOWN ? length : SHOWN), word, length < SHOWN ? "" : "...", what);
     bali_xml_place(reader->xml, bali_number_at(reader->xml, reader->list, reader->list->n), err);
     return status;
 }
@@ -53,16 +54,19 @@ static bal_status add(bali_number_reader *reader, const char *word, size_t lengt
     double value;
     if (!bali_number_read(word, length, &value)) return refuse_word(reader, word, length, err);
     if (value < 0) return refuse(reader, word, length, "is negative; use 0 or more", err);
-    if (reader->kind == BALI_STRENGTHS && value == 0) return refuse(reader, word, length, "is not more than 0; use a positive number", err);
+    if (reader->kind == BALI_STRENGTHS && value == 0)
+        return refuse(reader, word, length, "is not more than 0; use a positive number", err);
     if (reader->kind == BALI_PROBABILITIES && value > most_probability)
         return refuse(reader, word, length, "is more than 1; use a probability", err);
     if (list->n == reader->limit) {
         bal_status status = bal_error_set(err, BAL_ERR_DATA, "too-many-cells",
-                                          "more than %zu numbers; correct the list, or raise --max-cells", reader->limit);
+                                          "more than %zu numbers; correct the list, or raise --max-cells",
+                                          reader->limit);
         bali_xml_place(reader->xml, list->at, err);
         return status;
     }
-    if (!bali_grow((void **)&list->values, &list->capacity, list->n + 1, sizeof *list->values)) return bali_out_of_memory(err);
+    if (!bali_grow((void **)&list->values, &list->capacity, list->n + 1, sizeof *list->values))
+        return bali_out_of_memory(err);
     list->values[list->n++] = value == 0 ? 0 : value; /* no negative zero */
     return BAL_OK;
 }

@@ -23,13 +23,14 @@ typedef struct bali_number_reader {
     bali_xml *xml;
     bali_number_list *list;
     bali_number_kind kind;
-    size_t limit;   /* most numbers that are read */
-    size_t length;  /* of the word that the last piece of text broke off in */
+    size_t limit;  /* most numbers that are read */
+    size_t length; /* of the word that the last piece of text broke off in */
     char word[512];
 } bali_number_reader;
 
 /** Reads the numbers in the next piece of text. Fails: DATA with the place of the number; MEMORY. */
-BAL_MUST_CHECK bal_status bali_number_feed(bali_number_reader *reader, const char *bytes, size_t length, bal_error *err);
+BAL_MUST_CHECK bal_status bali_number_feed(bali_number_reader *reader, const char *bytes, size_t length,
+                                           bal_error *err);
 /** The text ends. */
 BAL_MUST_CHECK bal_status bali_number_finish(bali_number_reader *reader, bal_error *err);
 

@@ -9,13 +9,15 @@ enum { TOLD = 10 };
 static bali_remark_kind *kind_of(bali_remarks *remarks, const char *code) {
     for (size_t i = 0; i < remarks->n_kinds; i++)
         if (strcmp(remarks->kinds[i].code, code) == 0) return &remarks->kinds[i];
-    if (remarks->n_kinds == sizeof remarks->kinds / sizeof remarks->kinds[0]) return &remarks->kinds[remarks->n_kinds - 1];
+    if (remarks->n_kinds == sizeof remarks->kinds / sizeof remarks->kinds[0])
+        return &remarks->kinds[remarks->n_kinds - 1];
     remarks->kinds[remarks->n_kinds] = (bali_remark_kind){code, 0};
     return &remarks->kinds[remarks->n_kinds++];
 }
 
 static void tell(const bali_remarks *remarks, bal_error *notice) {
-    if (remarks->notices && remarks->notices->tell) remarks->notices->tell(remarks->notices->context, BAL_WARNING, notice);
+    if (remarks->notices && remarks->notices->tell)
+        remarks->notices->tell(remarks->notices->context, BAL_WARNING, notice);
 }
 
 bool bali_remarks_wanted(bali_remarks *remarks, const char *code) {

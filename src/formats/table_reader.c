@@ -148,17 +148,17 @@ static bal_status short_record(bali_table_reader *t, size_t n_cells) {
     return status;
 }
 
-/* There is a cell more than columns: reads on to say how many there are. */
+/* There is a cell more than columns: reads on to say how many there are; a line may have no end. */
 static bal_status long_record(bali_table_reader *t, const bali_csv_cell *first_beyond) {
     if (t->is_comment) return comment_line(t);
     size_t line, column, n_cells = t->header.n_columns + 1;
     bool at_end = first_beyond->ends_record && first_beyond->length == 0;
     bali_csv_cell cell = *first_beyond;
     bali_csv_place(t->csv, &line, &column);
-    while (!cell.ends_record && bali_csv_next(t->csv, &cell, NULL) == BAL_OK && cell.text) n_cells++;
+    while (!cell.ends_record && n_cells < BALI_MOST_COLUMNS && bali_csv_next(t->csv, &cell, NULL) == BAL_OK && cell.text) n_cells++;
     bal_status status = bal_error_set(&t->failure, BAL_ERR_SYNTAX, "ragged-record",
-                                      "found %zu cells, expected %zu as in the header on line %zu; %s", n_cells, t->header.n_columns,
-                                      t->header.line,
+                                      "found %zu cells%s, expected %zu as in the header on line %zu; %s", n_cells,
+                                      n_cells < BALI_MOST_COLUMNS ? "" : " or more", t->header.n_columns, t->header.line,
                                       at_end ? "remove the delimiter at the end of the line"
                                              : "quote a cell that holds a delimiter, or remove what is too much");
     place_error(t, &t->failure, line, column, NULL);

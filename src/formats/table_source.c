@@ -46,13 +46,9 @@ static bal_status fail(const table *t, bal_error *err) {
 
 /* Keeps the record at n, or not. Once there is a problem no record is given any more, but all are looked at. */
 static void keep_record(table *t) {
-    if (t->reader.problems.first.status != BAL_OK) {
-        t->n = 0;
-    } else if (t->reader.has_missing) {
-        t->dropped++;
-    } else {
-        t->places[t->n++] = t->reader.place - 1;
-    }
+    if (t->reader.problems.first.status != BAL_OK) return;
+    if (t->reader.has_missing) t->dropped++;
+    else t->places[t->n++] = t->reader.place - 1;
 }
 
 static void hand_over(table *t, bal_block *block) {

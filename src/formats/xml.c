@@ -1,6 +1,6 @@
-/* The only file that sees libxml2, which checks that the file is well formed and resolves references. The guard goes first,
- * and keeps the books: what libxml2 gives is compared with what the guard saw, since a libxml2 that ran out of memory
- * can leave parts out without a word. */
+/* The only file that sees libxml2, which checks that the file is well formed and resolves references. The guard goes
+ * first, and keeps the books: what libxml2 gives is compared with what the guard saw, since a libxml2 that ran out of
+ * memory can leave parts out without a word. */
 #include "formats/xml.h"
 
 #include "base/memory.h"
@@ -29,7 +29,7 @@ struct bali_xml {
     size_t starts, ends, attributes; /* what libxml2 has given */
     const xmlChar **attribute;       /* of the element that starts: name, prefix, URI, value, end */
     size_t n_attributes;
-    bali_text value;                 /* the attribute's that was asked for last */
+    bali_text value;   /* the attribute's that was asked for last */
     bal_status status; /* of the first failure */
     bal_error *err;
 };
@@ -45,7 +45,8 @@ bal_status bali_xml_create_take(const char *file, char *bytes, size_t length, ba
     xml->length = length;
     xml->known_line = 1;
     xml->file = bali_duplicate(file, strlen(file));
-    bal_status status = xml->file ? bali_xml_decode(&xml->text, &xml->length, &xml->declaration, err) : bali_out_of_memory(err);
+    bal_status status = xml->file ? bali_xml_decode(&xml->text, &xml->length, &xml->declaration, err)
+                                  : bali_out_of_memory(err);
     if (status != BAL_OK) {
         bal_error_place(err, file, 0, 0);
         bali_xml_free(xml);
@@ -146,7 +147,8 @@ static const char *explain(int code, char at_place) {
     case XML_ERR_HYPHEN_IN_COMMENT: return "-- inside a comment; write something else";
     case XML_ERR_SPACE_REQUIRED: return "a blank is missing in a tag; add it";
     case XML_ERR_NAME_TOO_LONG: return "a name that is too long; shorten it";
-    case XML_NS_ERR_UNDEFINED_NAMESPACE: return "a prefix that no xmlns attribute declares; declare it, or remove the prefix";
+    case XML_NS_ERR_UNDEFINED_NAMESPACE:
+        return "a prefix that no xmlns attribute declares; declare it, or remove the prefix";
     default: return NULL;
     }
 }
@@ -157,12 +159,13 @@ static void set_other(bali_xml *xml, const char *sentence) {
     size_t length = strcspn(sentence, "\n");
     while (length > 0 && strchr(". ", sentence[length - 1])) length--;
     bali_text_add(&text, sentence, length);
-    (void)bal_error_set(xml->err, BAL_ERR_SYNTAX, "bad-xml", "not well-formed XML (%s); correct it", bali_text_string(&text));
+    (void)bal_error_set(xml->err, BAL_ERR_SYNTAX, "bad-xml", "not well-formed XML (%s); correct it",
+                        bali_text_string(&text));
     bali_text_free(&text);
 }
 
-/* Where what is reported stands. libxml2 has come to the end of a reference, and of a ]]> it knows no more than the text that it
- * is in. */
+/* Where what is reported stands. libxml2 has come to the end of a reference, and of a ]]> it knows no more than the
+ * text that it is in. */
 static size_t place_of(const bali_xml *xml, int code) {
     size_t at = parser_offset(xml), back = at;
     const char *found;
@@ -188,7 +191,9 @@ static size_t place_of(const bali_xml *xml, int code) {
 static void on_report(void *context, xmlErrorPtr report) {
     bali_xml *xml = context;
     if (report->level < XML_ERR_ERROR || xml->status != BAL_OK) return;
-    if (report->code == XML_ERR_NO_MEMORY) {
+    /* A namespace for whose name there is no memory is reported as an empty one; those that are, the guard refuses. */
+    bool is_empty_namespace = report->code == XML_NS_ERR_XML_NAMESPACE && report->str1;
+    if (report->code == XML_ERR_NO_MEMORY || is_empty_namespace) {
         fail(xml, bali_out_of_memory(xml->err));
         return;
     }
@@ -217,8 +222,8 @@ static bal_status check_version(bali_xml *xml) {
     return BAL_ERR_SYNTAX;
 }
 
-/* While libxml2 works, what it has to say outside a parser (that there is no memory) comes here too, instead of being printed.
- * These two belong to the thread, and are put back. */
+/* While libxml2 works, what it has to say outside a parser (that there is no memory) comes here too, instead of being
+ * printed. These two belong to the thread, and are put back. */
 typedef struct manners {
     xmlStructuredErrorFunc report;
     void *context;
@@ -230,9 +235,9 @@ static manners take_reports(bali_xml *xml) {
     return before;
 }
 
-/* Flags that open files or resolve entities stay off, and so does HUGE: the limits it lifts (10 MB a text or a look-ahead)
- * are on trees and on single pieces of markup. A text that is told in pieces meets none, however long, and markup
- * is kept shorter by the guard. The encoding was dealt with before. */
+/* Flags that open files or resolve entities stay off, and so does HUGE: the limits it lifts (10 MB a text or a
+ * look-ahead) are on trees and on single pieces of markup. A text that is told in pieces meets none, however long, and
+ * markup is kept shorter by the guard. The encoding was dealt with before. */
 static bal_status create_parser(bali_xml *xml) {
     xmlSAXHandler handler;
     memset(&handler, 0, sizeof handler);
@@ -245,7 +250,8 @@ static bal_status create_parser(bali_xml *xml) {
     handler.serror = on_report;
     xml->parser = xmlCreatePushParserCtxt(&handler, xml, NULL, 0, NULL);
     if (!xml->parser) return bali_out_of_memory(xml->err);
-    (void)xmlCtxtUseOptions(xml->parser, XML_PARSE_NONET | XML_PARSE_NOERROR | XML_PARSE_NOWARNING | XML_PARSE_IGNORE_ENC);
+    (void)xmlCtxtUseOptions(xml->parser,
+                            XML_PARSE_NONET | XML_PARSE_NOERROR | XML_PARSE_NOWARNING | XML_PARSE_IGNORE_ENC);
     return BAL_OK;
 }
 
@@ -280,8 +286,8 @@ static void flush(bali_xml *xml) {
     if (xml->status == BAL_OK && xml->guard.depth > 0) feed_bytes(xml, empty, strlen(empty));
 }
 
-/* libxml2 reads a long CDATA section 300 bytes at a call, and keeps the rest. So it gets an empty one instead, and the section's
- * text is told from here. */
+/* libxml2 reads a long CDATA section 300 bytes at a call, and keeps the rest. So it gets an empty one instead, and the
+ * section's text is told from here. */
 static void tell_cdata(bali_xml *xml, size_t from, size_t to) {
     size_t text = from + strlen("<![CDATA["), end = to - strlen("]]>");
     flush(xml);

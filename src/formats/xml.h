@@ -16,8 +16,8 @@ typedef struct bali_xml_listener {
     const char *expected; /* the root element, or elements, for messages: "BIF" */
     /** An element begins with its tag at an offset; name is its local name. Attributes can be asked for. */
     bal_status (*start)(void *context, const char *name, size_t at, bal_error *err);
-    /** The next piece of text directly in the innermost open element; references are resolved. A text comes in any number
-     *  of pieces, whatever its length. */
+    /** The next piece of text directly in the innermost open element; references are resolved. A text comes in any
+     * number of pieces, whatever its length. */
     bal_status (*text)(void *context, const char *bytes, size_t length, bal_error *err);
     /** The innermost open element ends. */
     bal_status (*end)(void *context, bal_error *err);
@@ -34,7 +34,8 @@ typedef struct bali_xml_listener {
  * Fails:  SYNTAX for compressed data, an encoding that is not read, bytes that do not fit the encoding; MEMORY.
  * Cost:   O(length), in place unless the encoding is ISO-8859-x or windows-125x.
  */
-BAL_MUST_CHECK bal_status bali_xml_create_take(const char *file, char *bytes, size_t length, bali_xml **out, bal_error *err);
+BAL_MUST_CHECK bal_status bali_xml_create_take(const char *file, char *bytes, size_t length, bali_xml **out,
+                                               bal_error *err);
 void bali_xml_free(bali_xml *xml);
 
 /**
@@ -42,13 +43,13 @@ void bali_xml_free(bali_xml *xml);
  *
  * Nothing but the text at hand is looked at: no entity, no external file, no default value of an attribute.
  *
- * Fails:  SYNTAX with file, line and column of the first thing that is wrong, MEMORY, and whatever the listener returns.
- * Cost:   O(length); limits are those of xml_guard.h.
+ * Fails:  SYNTAX with file, line and column of the first thing that is wrong, MEMORY, and whatever the listener
+ * returns. Cost:   O(length); limits are those of xml_guard.h.
  */
 BAL_MUST_CHECK bal_status bali_xml_parse(bali_xml *xml, const bali_xml_listener *listener, bal_error *err);
 
-/** During start: the value of the element's attribute of that name without a prefix, or NULL. Borrowed until the next call.
- *  When memory runs out the value is cut, and the parse fails after start. */
+/** During start: the value of the element's attribute of that name without a prefix, or NULL. Borrowed until the next
+ * call. When memory runs out the value is cut, and the parse fails after start. */
 const char *bali_xml_attribute(bali_xml *xml, const char *name, size_t *length);
 /** During start: the name of the i-th attribute without a prefix, or NULL behind the last. Borrowed. */
 const char *bali_xml_attribute_name(const bali_xml *xml, size_t i);
@@ -69,8 +70,8 @@ typedef struct bali_xml_retrace {
 bali_xml_retrace bali_xml_retrace_start(const bali_xml *xml, size_t at);
 
 /**
- * The next byte of the element's text as the listener heard it, and the offset where it comes from. A reference counts as
- * one byte: a blank when it stands for one, else '&'. Returns false at the end of the text or at the next element.
+ * The next byte of the element's text as the listener heard it, and the offset where it comes from. A reference counts
+ * as one byte: a blank when it stands for one, else '&'. Returns false at the end of the text or at the next element.
  */
 bool bali_xml_retrace_next(bali_xml_retrace *retrace, char *byte, size_t *at);
 

@@ -16,7 +16,8 @@ static const char save_as_utf8[] = "save it as UTF-8";
 void bali_xml_position(const char *text, size_t offset, size_t *line, size_t *column) {
     size_t start = 0;
     *line = 1;
-    for (const char *next; (next = memchr(text + start, '\n', offset - start)); ++*line) start = (size_t)(next - text) + 1;
+    for (const char *next; (next = memchr(text + start, '\n', offset - start)); ++*line)
+        start = (size_t)(next - text) + 1;
     *column = 1 + bali_utf8_count(text + start, offset - start);
 }
 
@@ -35,7 +36,9 @@ static bal_status refuse_other_kinds(const char *bytes, size_t length, bal_error
     } kinds[] = {
         {"\x1F\x8B", "gzip data", "decompress it first"},
         {"BZh", "bzip2 data", "decompress it first"},
-        {"\xFD" "7zXZ", "xz data", "decompress it first"},
+        {"\xFD"
+         "7zXZ",
+         "xz data", "decompress it first"},
         {"\x28\xB5\x2F\xFD", "zstd data", "decompress it first"},
         {"PK\x03\x04", "a zip archive (or an office document)", "unpack it, and give the XML file inside"},
         {"%PDF", "a PDF document", "give the network's XML file"},
@@ -72,8 +75,8 @@ static bal_status refuse_wide(const char *bytes, size_t length, bal_error *err) 
         while (fitting < 4 && fits((unsigned char)bytes[fitting], encodings[i].pattern[fitting])) fitting++;
         if (fitting < 4) continue;
         (void)bal_error_set(err, BAL_ERR_SYNTAX, "encoding",
-                            "%s text; %s (iconv -f %s -t UTF-8 FILE > NEW) and declare encoding=\"UTF-8\"", encodings[i].name,
-                            save_as_utf8, encodings[i].name);
+                            "%s text; %s (iconv -f %s -t UTF-8 FILE > NEW) and declare encoding=\"UTF-8\"",
+                            encodings[i].name, save_as_utf8, encodings[i].name);
         return fail_behind(bytes, 0, err);
     }
     return BAL_OK;
@@ -127,15 +130,17 @@ static bal_status refuse_encoding(const char *encoding, bal_error *err) {
     bool is_wide = strncasecmp(encoding, "UTF-16", 6) == 0 || strncasecmp(encoding, "UTF-32", 6) == 0;
     if (is_wide) {
         (void)bal_error_set(err, BAL_ERR_SYNTAX, "encoding",
-                            "declares the encoding %s, which its bytes are not; %s and declare encoding=\"UTF-8\"", encoding,
-                            save_as_utf8);
+                            "declares the encoding %s, which its bytes are not; %s and declare encoding=\"UTF-8\"",
+                            encoding, save_as_utf8);
     } else if (is_plain) {
-        (void)bal_error_set(err, BAL_ERR_SYNTAX, "encoding",
-                            "encoding %s is not read; %s (iconv -f %s -t UTF-8 FILE > NEW) and declare encoding=\"UTF-8\"", encoding,
-                            save_as_utf8, encoding);
+        (void)bal_error_set(
+            err, BAL_ERR_SYNTAX, "encoding",
+            "encoding %s is not read; %s (iconv -f %s -t UTF-8 FILE > NEW) and declare encoding=\"UTF-8\"", encoding,
+            save_as_utf8, encoding);
     } else {
         (void)bal_error_set(err, BAL_ERR_SYNTAX, "encoding",
-                            "encoding \"%s\" is not read; %s (with iconv) and declare encoding=\"UTF-8\"", encoding, save_as_utf8);
+                            "encoding \"%s\" is not read; %s (with iconv) and declare encoding=\"UTF-8\"", encoding,
+                            save_as_utf8);
     }
     return fail_behind("", 0, err);
 }
@@ -160,11 +165,11 @@ static bal_status convert(char **bytes, size_t *length, const char *encoding, ba
     size_t left = *length;
     bool good = true;
     while (good && left > 0 && !to.failed) good = convert_piece(converter, &from, &left, &to);
-    if (good) (void)convert_piece(converter, NULL, NULL, &to);
     if (to.failed) {
         status = bali_out_of_memory(err);
     } else if (!good) {
-        status = bal_error_set(err, BAL_ERR_SYNTAX, "bad-encoding", "byte 0x%02X does not exist in %s; correct the declared encoding",
+        status = bal_error_set(err, BAL_ERR_SYNTAX, "bad-encoding",
+                               "byte 0x%02X does not exist in %s; correct the declared encoding",
                                (unsigned)(unsigned char)*from, encoding);
         (void)fail_behind(bali_text_string(&to), to.length, err);
     } else {
@@ -186,8 +191,9 @@ static bal_status refuse_byte(unsigned char byte, family encoded, bal_error *err
     if (encoded == ASCII)
         return bal_error_set(err, BAL_ERR_SYNTAX, "bad-encoding",
                              "byte 0x%02X is not US-ASCII, the declared encoding; declare the right encoding", byte);
-    return bal_error_set(err, BAL_ERR_SYNTAX, "bad-encoding",
-                         "byte 0x%02X is not UTF-8; declare the encoding (such as ISO-8859-1), or convert the file with iconv", byte);
+    return bal_error_set(
+        err, BAL_ERR_SYNTAX, "bad-encoding",
+        "byte 0x%02X is not UTF-8; declare the encoding (such as ISO-8859-1), or convert the file with iconv", byte);
 }
 
 /* Checks every character, in place; CR LF and CR become LF. Text of converted one-byte encodings comes as UTF-8. */
@@ -206,8 +212,8 @@ static bal_status clean(char *bytes, size_t *length, family encoded, bal_error *
             return fail_behind(bytes, to, err);
         }
         if (!is_xml_character(character)) {
-            (void)bal_error_set(err, BAL_ERR_SYNTAX, "forbidden-character", "character U+%04X, which XML does not allow; remove it",
-                                (unsigned)character);
+            (void)bal_error_set(err, BAL_ERR_SYNTAX, "forbidden-character",
+                                "character U+%04X, which XML does not allow; remove it", (unsigned)character);
             return fail_behind(bytes, to, err);
         }
         if (character == '\r') {

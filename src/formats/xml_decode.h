@@ -20,7 +20,8 @@ typedef struct bali_xml_declaration {
  *         each end a line, columns are characters.
  * Source: Extensible Markup Language (XML) 1.0, fifth edition (2008), sections 2.2, 2.11 and 4.3.3.
  */
-BAL_MUST_CHECK bal_status bali_xml_decode(char **bytes, size_t *length, bali_xml_declaration *declaration, bal_error *err);
+BAL_MUST_CHECK bal_status bali_xml_decode(char **bytes, size_t *length, bali_xml_declaration *declaration,
+                                          bal_error *err);
 
 /** The line and column of an offset in clean text. Cost: O(offset). */
 void bali_xml_position(const char *text, size_t offset, size_t *line, size_t *column);

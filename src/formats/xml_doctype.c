@@ -1,5 +1,5 @@
-/* The document type declaration. Nothing of it is wanted: no entity, no default value, no other file. Its declarations are
- * looked through for what would have changed the document, and blanked out before the parser can see them. */
+/* The document type declaration. Nothing of it is wanted: no entity, no default value, no other file. Its declarations
+ * are looked through for what would have changed the document, and blanked out before the parser can see them. */
 #include "formats/xml_guard.h"
 
 #include <stdio.h>
@@ -35,8 +35,9 @@ static bal_status skip_literal(const bali_xml_guard *guard, size_t begin, size_t
 }
 
 static bal_status refuse_reference(const bali_xml_guard *guard, size_t at, bal_error *err) {
-    return bali_xml_guard_fail(guard, at, "entity-declaration", err,
-                               "parameter references are not accepted; write the declarations themselves in their place");
+    return bali_xml_guard_fail(
+        guard, at, "entity-declaration", err,
+        "parameter references are not accepted; write the declarations themselves in their place");
 }
 
 static int shown(size_t bytes) {
@@ -47,13 +48,15 @@ static int shown(size_t bytes) {
 static void remark_default(bali_xml_guard *guard, word element, word attribute, size_t from, size_t to) {
     char message[256];
     (void)snprintf(message, sizeof message,
-                   "the default value \"%.*s\" of attribute %.*s of %.*s in the document type is not applied; write it in each tag",
-                   shown(to - from), guard->text + from, shown(attribute.bytes), guard->text + attribute.at, shown(element.bytes),
-                   guard->text + element.at);
+                   "the default value \"%.*s\" of attribute %.*s of %.*s in the document type is not applied; write it "
+                   "in each tag",
+                   shown(to - from), guard->text + from, shown(attribute.bytes), guard->text + attribute.at,
+                   shown(element.bytes), guard->text + element.at);
     guard->remark(guard->context, attribute.at, "default-attribute", message);
 }
 
-/* Looks through <!ATTLIST ...> from behind its keyword, for default values; *i is then at its >. */
+/* Looks through <!ATTLIST ...> from behind its keyword, for default values: a value in quotes is one, behind #FIXED
+ * too. *i is then at its >. */
 static bal_status attribute_list(bali_xml_guard *guard, size_t begin, size_t *i, bal_error *err) {
     expected next = ELEMENT;
     word element = {0}, attribute = {0};
@@ -77,11 +80,11 @@ static bal_status attribute_list(bali_xml_guard *guard, size_t begin, size_t *i,
             *i = skip_word(guard, from);
             word here = {from, *i - from};
             if (here.bytes == 0)
-                return bali_xml_guard_fail(guard, from, "bad-xml", err, "an attribute list that is not well formed; correct it");
+                return bali_xml_guard_fail(guard, from, "bad-xml", err,
+                                           "an attribute list that is not well formed; correct it");
             if (next == ELEMENT) element = here;
             if (next == NAME) attribute = here;
-            bool stays = next == TYPE ? begins(guard, from, "NOTATION") : next == DEFAULT && begins(guard, from, "#FIXED");
-            if (!stays) next = next == DEFAULT ? NAME : next + 1;
+            next = next == DEFAULT ? NAME : next + 1;
         }
     }
 }
@@ -91,7 +94,9 @@ static bal_status other_declaration(const bali_xml_guard *guard, size_t begin, s
     while (guard->text[*i] != '>') {
         char c = guard->text[*i];
         if (c == '%') return refuse_reference(guard, *i, err);
-        if (c == '<') return bali_xml_guard_fail(guard, *i, "bad-xml", err, "a declaration that meets another < before its end; is a > missing?");
+        if (c == '<')
+            return bali_xml_guard_fail(guard, *i, "bad-xml", err,
+                                       "a declaration that meets another < before its end; is a > missing?");
         if (c == '"' || c == '\'') {
             bal_status status = skip_literal(guard, begin, i, err);
             if (status != BAL_OK) return status;
@@ -114,7 +119,8 @@ static bal_status subset_piece(bali_xml_guard *guard, size_t begin, size_t *i, b
         return bali_xml_guard_fail(guard, from, "entity-declaration", err,
                                    "entity declarations are not accepted; write the text itself in their place");
     if (begins(guard, from, "<!NOTATION"))
-        return bali_xml_guard_fail(guard, from, "entity-declaration", err, "notation declarations are not accepted; remove this one");
+        return bali_xml_guard_fail(guard, from, "entity-declaration", err,
+                                   "notation declarations are not accepted; remove this one");
     bal_status status;
     if (begins(guard, from, "<!ATTLIST")) {
         *i += strlen("<!ATTLIST");
@@ -138,7 +144,8 @@ static bal_status internal_subset(bali_xml_guard *guard, size_t *i, bal_error *e
     for (;;) {
         *i = skip_blanks(guard, *i);
         if (*i - begin > BALI_XML_MAX_TAG_BYTES)
-            return bali_xml_guard_fail(guard, begin, "xml-limit", err, "the declarations in the document type are longer than %zu bytes; shorten them",
+            return bali_xml_guard_fail(guard, begin, "xml-limit", err,
+                                       "the declarations in the document type are longer than %zu bytes; shorten them",
                                        BALI_XML_MAX_TAG_BYTES);
         if (guard->text[*i] == ']') return BAL_OK;
         bal_status status = subset_piece(guard, begin, i, err);
@@ -155,12 +162,14 @@ static bal_status external_identifier(bali_xml_guard *guard, size_t begin, size_
     for (; literals > 0 && status == BAL_OK; literals--) {
         *i = skip_blanks(guard, *i);
         if (guard->text[*i] != '"' && guard->text[*i] != '\'')
-            return bali_xml_guard_fail(guard, *i, "bad-xml", err, "a quoted name is expected in the document type declaration; add it");
+            return bali_xml_guard_fail(guard, *i, "bad-xml", err,
+                                       "a quoted name is expected in the document type declaration; add it");
         status = skip_literal(guard, begin, i, err);
     }
     if (status == BAL_OK)
-        guard->remark(guard->context, at, "external-dtd", "the document type names another file, which is not opened; nothing it "
-                                                          "declares is applied");
+        guard->remark(guard->context, at, "external-dtd",
+                      "the document type names another file, which is not opened; nothing it "
+                      "declares is applied");
     *i = skip_blanks(guard, *i);
     return status;
 }
@@ -168,8 +177,9 @@ static bal_status external_identifier(bali_xml_guard *guard, size_t begin, size_
 bal_status bali_xml_guard_doctype(bali_xml_guard *guard, bal_error *err) {
     size_t begin = guard->at;
     if (guard->has_doctype || guard->n_starts > 0)
-        return bali_xml_guard_fail(guard, begin, "bad-xml", err,
-                                   "a document type declaration may stand once, before the root element; remove this one");
+        return bali_xml_guard_fail(
+            guard, begin, "bad-xml", err,
+            "a document type declaration may stand once, before the root element; remove this one");
     size_t name_end = skip_word(guard, skip_blanks(guard, begin + strlen("<!DOCTYPE")));
     size_t i = skip_blanks(guard, name_end);
     bal_status status = external_identifier(guard, begin, &i, err);
@@ -182,7 +192,8 @@ bal_status bali_xml_guard_doctype(bali_xml_guard *guard, bal_error *err) {
     }
     if (i == guard->length) return bali_xml_guard_find(guard, i, i, ">", what, &i, err);
     if (guard->text[i] != '>')
-        return bali_xml_guard_fail(guard, i, "bad-xml", err, "a document type declaration that is not well formed; correct it");
+        return bali_xml_guard_fail(guard, i, "bad-xml", err,
+                                   "a document type declaration that is not well formed; correct it");
     bali_xml_guard_blank(guard, name_end, i);
     guard->has_doctype = true;
     guard->at = i + 1;

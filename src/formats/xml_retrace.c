@@ -1,5 +1,5 @@
-/* An element's text once more, byte by byte: only asked for when something in it has to be pointed at, so that the parse
- * itself need not keep the place of every number. */
+/* An element's text once more, byte by byte: only asked for when something in it has to be pointed at, so that the
+ * parse itself need not keep the place of every number. */
 #include "formats/xml.h"
 
 #include <stdlib.h>
@@ -11,7 +11,8 @@ static bool begins(const bali_xml_retrace *retrace, const char *what) {
 
 static void skip_past(bali_xml_retrace *retrace, const char *what) {
     const char *found = strstr(retrace->text + retrace->at, what);
-    retrace->at = found ? (size_t)(found - retrace->text) + strlen(what) : retrace->at + strlen(retrace->text + retrace->at);
+    retrace->at = found ? (size_t)(found - retrace->text) + strlen(what)
+                        : retrace->at + strlen(retrace->text + retrace->at);
 }
 
 /* Comments, instructions and the marks around CDATA are no text. */

@@ -14,7 +14,8 @@ bal_network_options bal_network_options_defaults(void) {
     return (bal_network_options){.max_cells = 0, .for_slowest = false, .notices = NULL};
 }
 
-static bal_status take_facts(const char *path, const char *bytes, size_t length, bal_file_facts *facts, bal_error *err) {
+static bal_status take_facts(const char *path, const char *bytes, size_t length, bal_file_facts *facts,
+                             bal_error *err) {
     bali_hash *hash = bali_hash_create();
     if (!hash) return bali_out_of_memory(err);
     bali_hash_add(hash, bytes, length);
@@ -37,8 +38,8 @@ bal_status bali_xmlbif_document(bali_xml *xml, const bal_network_options *option
     return status;
 }
 
-bal_status bal_document_read(const char *path, const bal_network_options *options, bal_document **out, bal_file_facts *facts,
-                             bal_error *err) {
+bal_status bal_document_read(const char *path, const bal_network_options *options, bal_document **out,
+                             bal_file_facts *facts, bal_error *err) {
     *out = NULL;
     if (facts) *facts = (bal_file_facts){0};
     bal_network_options defaults = bal_network_options_defaults();

@@ -17,6 +17,7 @@
 BAL_MUST_CHECK bal_status bali_xmlbif_read(bali_draft *draft, size_t max_cells, bali_remarks *remarks, bal_error *err);
 
 /** Reads an XMLBIF text into a document. Fails as bal_document_read. */
-BAL_MUST_CHECK bal_status bali_xmlbif_document(bali_xml *xml, const bal_network_options *options, bal_document **out, bal_error *err);
+BAL_MUST_CHECK bal_status bali_xmlbif_document(bali_xml *xml, const bal_network_options *options, bal_document **out,
+                                               bal_error *err);
 
 #endif

@@ -1,5 +1,5 @@
-/* The elements of XMLBIF into a draft. What may stand where is one table; an element that the format does not know is passed
- * over with a warning, one that it knows has to be in its place. */
+/* The elements of XMLBIF into a draft. What may stand where is one table; an element that the format does not know is
+ * passed over with a warning, one that it knows has to be in its place. */
 #include "formats/xmlbif.h"
 
 #include "base/memory.h"
@@ -9,9 +9,9 @@
 #include <string.h>
 #include <strings.h>
 
+/* Those up to DEFINITION hold elements, the others text. */
 typedef enum element {
-    FILE_ITSELF, BIF, NETWORK, VARIABLE, DEFINITION,     /* hold elements */
-    NAME, OUTCOME, FOR, GIVEN, TABLE, PROPERTY, N_ELEMENTS /* hold text */
+    FILE_ITSELF, BIF, NETWORK, VARIABLE, DEFINITION, NAME, OUTCOME, FOR, GIVEN, TABLE, PROPERTY, N_ELEMENTS
 } element;
 
 static const char *const element_names[N_ELEMENTS] = {
@@ -23,9 +23,9 @@ static const struct {
 } grammar[] = {
     {FILE_ITSELF, BIF},
     {BIF, NETWORK},
-    {NETWORK, NAME},     {NETWORK, PROPERTY},   {NETWORK, VARIABLE}, {NETWORK, DEFINITION},
-    {VARIABLE, NAME},    {VARIABLE, OUTCOME},   {VARIABLE, PROPERTY},
-    {DEFINITION, FOR},   {DEFINITION, GIVEN},   {DEFINITION, TABLE}, {DEFINITION, PROPERTY},
+    {NETWORK, NAME},   {NETWORK, PROPERTY}, {NETWORK, VARIABLE},  {NETWORK, DEFINITION},
+    {VARIABLE, NAME},  {VARIABLE, OUTCOME}, {VARIABLE, PROPERTY},
+    {DEFINITION, FOR}, {DEFINITION, GIVEN}, {DEFINITION, TABLE},  {DEFINITION, PROPERTY},
 };
 
 /* Text outside TABLE and PROPERTY; a property's name; names that are told of as unknown. */
@@ -37,14 +37,14 @@ typedef struct reader {
     bali_draft *draft;
     bali_remarks *remarks;
     size_t max_cells;
-    element path[DEEPEST];   /* the open elements; path[depth] is the innermost */
-    size_t at[DEEPEST];      /* where each begins */
+    element path[DEEPEST]; /* the open elements; path[depth] is the innermost */
+    size_t at[DEEPEST];    /* where each begins */
     size_t depth;
-    size_t ignored;          /* open elements inside one that is passed over, itself included */
-    size_t network_at;       /* of NETWORK; 0 = not yet: the root comes first */
-    size_t text_bytes;       /* since the last tag */
-    bali_text text;          /* of the innermost element, unless it is a list of numbers */
-    size_t blanks;           /* at the beginning of a property's text */
+    size_t ignored;    /* open elements inside one that is passed over, itself included */
+    size_t network_at; /* of NETWORK; 0 = not yet: the root comes first */
+    size_t text_bytes; /* since the last tag */
+    bali_text text;    /* of the innermost element, unless it is a list of numbers */
+    size_t blanks;     /* at the beginning of a property's text */
     property_kind property;
     bali_number_reader numbers;
     char *unknown[MOST_UNKNOWN];
@@ -91,8 +91,8 @@ static bool is_allowed(element inside, element e) {
 }
 
 static bal_status refuse_root(const reader *r, const char *name, size_t at, bal_error *err) {
-    (void)bal_error_set(err, BAL_ERR_SYNTAX, "wrong-root", "the root element is <%.40s>; expected <BIF>, of XMLBIF %s", name,
-                        BALI_XMLBIF_VERSION);
+    (void)bal_error_set(err, BAL_ERR_SYNTAX, "wrong-root", "the root element is <%.40s>; expected <BIF>, of XMLBIF %s",
+                        name, BALI_XMLBIF_VERSION);
     bali_xml_place(r->draft->xml, at, err);
     return BAL_ERR_SYNTAX;
 }
@@ -107,37 +107,40 @@ static bal_status check_version(const reader *r, size_t at, bal_error *err) {
     size_t length;
     const char *version = bali_xml_attribute(r->draft->xml, "VERSION", &length);
     if (!version) {
-        bali_remark(r->remarks, at, "no-version", NULL, "the root element has no VERSION; read as version %s", BALI_XMLBIF_VERSION);
+        bali_remark(r->remarks, at, "no-version", NULL, "the root element has no VERSION; read as version %s",
+                    BALI_XMLBIF_VERSION);
         return BAL_OK;
     }
     if (attribute_is(r, "VERSION", BALI_XMLBIF_VERSION)) return BAL_OK;
-    return bali_draft_fail(r->draft, at, NULL, "format-version", err, "version \"%.*s\" of the format is not read; use %s",
-                           (int)(length < 40 ? length : 40), version, BALI_XMLBIF_VERSION);
+    return bali_draft_fail(r->draft, at, NULL, "format-version", err,
+                           "version \"%.*s\" of the format is not read; use %s", (int)(length < 40 ? length : 40),
+                           version, BALI_XMLBIF_VERSION);
 }
 
 static bal_status check_type(const reader *r, size_t at, bal_error *err) {
     size_t length;
     const char *type = bali_xml_attribute(r->draft->xml, "TYPE", &length);
     if (!type || attribute_is(r, "TYPE", "nature")) return BAL_OK;
-    return bali_draft_fail(r->draft, at, NULL, "variable-type", err,
-                           "a variable of TYPE \"%.*s\"; only nature is possible, so remove the variable or change its type",
-                           (int)(length < 40 ? length : 40), type);
+    return bali_draft_fail(
+        r->draft, at, NULL, "variable-type", err,
+        "a variable of TYPE \"%.*s\"; only nature is possible, so remove the variable or change its type",
+        (int)(length < 40 ? length : 40), type);
 }
 
 static void check_attributes(const reader *r, element e, size_t at) {
     const char *expected = e == BIF ? "VERSION" : e == VARIABLE ? "TYPE" : "", *name;
     for (size_t i = 0; (name = bali_xml_attribute_name(r->draft->xml, i)); i++)
         if (strcmp(name, expected) != 0)
-            bali_remark(r->remarks, at, "unknown-attribute", NULL, "attribute %.40s of <%s> is not known, and not used", name,
-                        element_names[e]);
+            bali_remark(r->remarks, at, "unknown-attribute", NULL, "attribute %.40s of <%s> is not known, and not used",
+                        name, element_names[e]);
 }
 
 static bal_status begin_list(reader *r, bali_draft_list which, bali_number_kind kind, size_t at, bal_error *err) {
     bali_number_list *list = &definition(r)->lists[which];
     const char *name = bali_draft_list_name(which), *child = definition(r)->child.text;
     if (list->given)
-        return bali_draft_fail(r->draft, at, child, which == BALI_LIST_TABLE ? "duplicate-table" : "duplicate-property", err,
-                               "a second %s in one definition; the first is on line %zu: remove one", name,
+        return bali_draft_fail(r->draft, at, child, which == BALI_LIST_TABLE ? "duplicate-table" : "duplicate-property",
+                               err, "a second %s in one definition; the first is on line %zu: remove one", name,
                                bali_xml_line(r->draft->xml, list->at));
     list->given = true;
     list->is_named = which != BALI_LIST_TABLE;
@@ -154,7 +157,8 @@ static bal_status begin(reader *r, element e, size_t at, bal_error *err) {
     case BIF: return check_version(r, at, err);
     case NETWORK:
         if (r->network_at > 0)
-            return bali_draft_fail(r->draft, at, NULL, "second-network", err, "a second NETWORK; the first is on line %zu: keep one of them",
+            return bali_draft_fail(r->draft, at, NULL, "second-network", err,
+                                   "a second NETWORK; the first is on line %zu: keep one of them",
                                    bali_xml_line(r->draft->xml, r->network_at));
         r->network_at = at;
         return BAL_OK;
@@ -165,19 +169,23 @@ static bal_status begin(reader *r, element e, size_t at, bal_error *err) {
     }
 }
 
-/* An element that the format does not know. One that differs only in case, or that holds tables under another name, is not
- * passed over: what it says would be lost. */
+/* An element that the format does not know. One that differs only in case, or that holds tables under another name, is
+ * not passed over: what it says would be lost. */
 static bal_status meet_unknown(reader *r, const char *name, size_t at, bal_error *err) {
     for (element e = BIF; e < N_ELEMENTS; e++)
         if (strcasecmp(name, element_names[e]) == 0)
-            return bali_draft_fail(r->draft, at, subject(r), "misplaced-element", err, "<%.40s> is written <%s>", name, element_names[e]);
+            return bali_draft_fail(r->draft, at, subject(r), "misplaced-element", err, "<%.40s> is written <%s>", name,
+                                   element_names[e]);
     if (innermost(r) == NETWORK && strcasecmp(name, "PROBABILITY") == 0)
-        return bali_draft_fail(r->draft, at, NULL, "misplaced-element", err, "<%.40s> is not of this format; write <DEFINITION>", name);
+        return bali_draft_fail(r->draft, at, NULL, "misplaced-element", err,
+                               "<%.40s> is not of this format; write <DEFINITION>", name);
     r->ignored = 1;
     for (size_t i = 0; i < r->n_unknown; i++)
         if (strcmp(r->unknown[i], name) == 0) return BAL_OK;
-    bali_remark(r->remarks, at, "unknown-element", subject(r), "element <%.40s> is not of this format and is passed over; it will not be "
-                                                               "written", name);
+    bali_remark(r->remarks, at, "unknown-element", subject(r),
+                "element <%.40s> is not of this format and is passed over; it will not be "
+                "written",
+                name);
     if (r->n_unknown == MOST_UNKNOWN) return BAL_OK;
     r->unknown[r->n_unknown] = bali_duplicate(name, strlen(name));
     return r->unknown[r->n_unknown++] ? BAL_OK : bali_out_of_memory(err);
@@ -193,12 +201,15 @@ static bal_status start(void *context, const char *name, size_t at, bal_error *e
     }
     if (inside == FILE_ITSELF && e != BIF) return refuse_root(r, name, at, err);
     if (holds_text(inside))
-        return bali_draft_fail(r->draft, at, subject(r), "misplaced-element", err, "element <%.40s> inside <%s>, which holds text only; "
-                                                                                 "remove it", name, element_names[inside]);
+        return bali_draft_fail(r->draft, at, subject(r), "misplaced-element", err,
+                               "element <%.40s> inside <%s>, which holds text only; "
+                               "remove it",
+                               name, element_names[inside]);
     if (e == FILE_ITSELF) return meet_unknown(r, name, at, err);
     if (!is_allowed(inside, e))
-        return bali_draft_fail(r->draft, at, subject(r), "misplaced-element", err, "<%s> cannot stand in <%s>; move it to its place",
-                               element_names[e], element_names[inside]);
+        return bali_draft_fail(r->draft, at, subject(r), "misplaced-element", err,
+                               "<%s> cannot stand in <%s>; move it to its place", element_names[e],
+                               element_names[inside]);
     check_attributes(r, e, at);
     r->depth++;
     r->path[r->depth] = e;
@@ -221,8 +232,8 @@ static const char *trimmed(const bali_text *text, size_t *length) {
     return from;
 }
 
-/* Whether a property of a definition is one of Ballast's lists of numbers shows once its = is there. A text may come byte by
- * byte, so only a little of it is looked at each time. */
+/* Whether a property of a definition is one of Ballast's lists of numbers shows once its = is there. A text may come
+ * byte by byte, so only a little of it is looked at each time. */
 static bal_status decide_property(reader *r, bal_error *err) {
     static const bali_number_kind kinds[BALI_N_LISTS] = {BALI_PROBABILITIES, BALI_COUNTS, BALI_COUNTS, BALI_STRENGTHS};
     while (r->blanks < r->text.length && is_blank(r->text.bytes[r->blanks])) r->blanks++;
@@ -250,7 +261,8 @@ static bal_status decide_property(reader *r, bal_error *err) {
 
 static bal_status refuse_stray(const reader *r, bal_error *err) {
     size_t at = r->at[r->depth];
-    return bali_draft_fail(r->draft, at, subject(r), "misplaced-text", err, "text directly inside <%s>, which holds elements only; remove it",
+    return bali_draft_fail(r->draft, at, subject(r), "misplaced-text", err,
+                           "text directly inside <%s>, which holds elements only; remove it",
                            element_names[innermost(r)]);
 }
 
@@ -261,7 +273,8 @@ static bal_status text(void *context, const char *bytes, size_t length, bal_erro
     r->text_bytes += length;
     if (r->text_bytes > LONGEST_TEXT && (r->ignored > 0 || (e != TABLE && e != PROPERTY)))
         return bali_draft_fail(r->draft, r->at[r->depth], subject(r), "xml-limit", err,
-                               "a text of more than %d bytes that is neither TABLE nor PROPERTY; shorten it", LONGEST_TEXT);
+                               "a text of more than %d bytes that is neither TABLE nor PROPERTY; shorten it",
+                               LONGEST_TEXT);
     if (r->ignored > 0) return BAL_OK;
     bal_status status = BAL_OK;
     if (is_list) {
@@ -272,7 +285,8 @@ static bal_status text(void *context, const char *bytes, size_t length, bal_erro
     } else {
         bali_text_add(&r->text, bytes, length);
         if (r->text.failed) return bali_out_of_memory(err);
-        if (e == PROPERTY && r->property == UNDECIDED && r->path[r->depth - 1] == DEFINITION) status = decide_property(r, err);
+        if (e == PROPERTY && r->property == UNDECIDED && r->path[r->depth - 1] == DEFINITION)
+            status = decide_property(r, err);
     }
     if (status != BAL_OK && subject(r)) bal_error_context(err, 0, subject(r));
     return status;
@@ -280,45 +294,31 @@ static bal_status text(void *context, const char *bytes, size_t length, bal_erro
 
 /* ---- ends ---- */
 
-static bal_status check_name(const reader *r, const char *name, size_t length, bal_error *err) {
-    const char *what = element_names[innermost(r)];
-    size_t at = r->at[r->depth];
-    bool may_be_empty = r->path[r->depth - 1] == NETWORK;
-    if (length == 0 && !may_be_empty)
-        return bali_draft_fail(r->draft, at, subject(r), "empty-name", err, "an empty %s; write the name into it", what);
-    if (length > BAL_MAX_NAME_BYTES)
-        return bali_draft_fail(r->draft, at, subject(r), "long-name", err, "%s \"%.40s...\" has %zu bytes; use at most %zu", what, name,
-                               length, BAL_MAX_NAME_BYTES);
-    for (size_t i = 0; i < length;) {
-        uint32_t character = 0;
-        size_t size = bali_utf8_next(name + i, length - i, &character);
-        if (size == 0 || bali_is_control(character))
-            return bali_draft_fail(r->draft, at, subject(r), "control-character", err,
-                                   "%s \"%.*s\" holds the control character U+%04X; remove it", what, (int)length, name, (unsigned)character);
-        i += size;
-    }
-    return BAL_OK;
-}
-
 /* The text read as a name; taken by *out. */
 static bal_status take_name(reader *r, bali_draft_text *out, bal_error *err) {
     size_t length;
     const char *name = trimmed(&r->text, &length);
-    bal_status status = check_name(r, name, length, err);
+    bool may_be_empty = r->path[r->depth - 1] == NETWORK;
+    size_t at = r->at[r->depth];
+    bal_status status = BAL_OK;
+    if (length > 0 || !may_be_empty)
+        status = bali_draft_check_name(r->draft, element_names[innermost(r)], name, length, at, subject(r), err);
     if (status != BAL_OK) return status;
-    *out = (bali_draft_text){bali_duplicate(name, length), r->at[r->depth]};
+    *out = (bali_draft_text){bali_duplicate(name, length), at};
     return out->text ? BAL_OK : bali_out_of_memory(err);
 }
 
 static bal_status take_only_name(reader *r, bali_draft_text *out, bal_error *err) {
     if (out->text)
         return bali_draft_fail(r->draft, r->at[r->depth], out->text, "duplicate-name", err,
-                               "a second %s in one %s; the first is on line %zu: remove one", element_names[innermost(r)],
-                               element_names[r->path[r->depth - 1]], bali_xml_line(r->draft->xml, out->at));
+                               "a second %s in one %s; the first is on line %zu: remove one",
+                               element_names[innermost(r)], element_names[r->path[r->depth - 1]],
+                               bali_xml_line(r->draft->xml, out->at));
     return take_name(r, out, err);
 }
 
-static bal_status take_another_name(reader *r, bool (*add_take)(bali_draft *draft, bali_draft_text text), bal_error *err) {
+static bal_status take_another_name(reader *r, bool (*add_take)(bali_draft *draft, bali_draft_text text),
+                                    bal_error *err) {
     bali_draft_text name = {0};
     bal_status status = take_name(r, &name, err);
     return status != BAL_OK || add_take(r->draft, name) ? status : bali_out_of_memory(err);
@@ -327,7 +327,8 @@ static bal_status take_another_name(reader *r, bool (*add_take)(bali_draft *draf
 static bal_status take_property(reader *r, bal_error *err) {
     if (r->property == NUMBERS) return bali_number_finish(&r->numbers, err);
     bali_draft *draft = r->draft;
-    if (!bali_grow((void **)&draft->properties, &draft->property_capacity, draft->n_properties + 1, sizeof *draft->properties))
+    if (!bali_grow((void **)&draft->properties, &draft->property_capacity, draft->n_properties + 1,
+                   sizeof *draft->properties))
         return bali_out_of_memory(err);
     bali_draft_property *p = &draft->properties[draft->n_properties];
     switch (r->path[r->depth - 1]) {
@@ -379,7 +380,8 @@ static void remark(void *context, size_t at, const char *code, const char *messa
 
 bal_status bali_xmlbif_read(bali_draft *draft, size_t max_cells, bali_remarks *remarks, bal_error *err) {
     reader r = {.draft = draft, .remarks = remarks, .max_cells = max_cells};
-    bali_xml_listener listener = {.context = &r, .expected = "BIF", .start = start, .text = text, .end = end, .remark = remark};
+    bali_xml_listener listener = {
+        .context = &r, .expected = "BIF", .start = start, .text = text, .end = end, .remark = remark};
     bal_status status = bali_xml_parse(draft->xml, &listener, err);
     if (status == BAL_OK && r.network_at == 0)
         status = bali_draft_fail(draft, 0, NULL, "no-network", err, "there is no NETWORK in the BIF element; add it");

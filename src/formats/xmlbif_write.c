@@ -1,4 +1,5 @@
-/* A document as XMLBIF 0.3: one row of a table a line, so that people can read it and line-wise tools can compare it. */
+/* A document as XMLBIF 0.3: one row of a table a line, so that people can read it and line-wise tools can compare it.
+ */
 #include "formats/xmlbif.h"
 
 #include "base/markup.h"
@@ -61,13 +62,15 @@ static bool chain_properties(writer *w) {
 }
 
 static void put_properties(writer *w, bal_property_of of, size_t variable, const char *indent) {
-    for (size_t i = w->first[of][variable]; i > 0; i = w->next[i - 1]) put_element(w, indent, "PROPERTY", w->properties[i - 1].text);
+    for (size_t i = w->first[of][variable]; i > 0; i = w->next[i - 1])
+        put_element(w, indent, "PROPERTY", w->properties[i - 1].text);
 }
 
 static void put_variable(writer *w, size_t v) {
     bali_text_puts(&w->text, "    <VARIABLE TYPE=\"nature\">\n");
     put_element(w, "      ", "NAME", bal_domain_name(w->domain, v));
-    for (size_t k = 0; k < bal_domain_outcomes(w->domain, v); k++) put_element(w, "      ", "OUTCOME", bal_domain_outcome(w->domain, v, k));
+    for (size_t k = 0; k < bal_domain_outcomes(w->domain, v); k++)
+        put_element(w, "      ", "OUTCOME", bal_domain_outcome(w->domain, v, k));
     put_properties(w, BAL_OF_VARIABLE, v, "      ");
     bali_text_puts(&w->text, "    </VARIABLE>\n");
 }

@@ -105,6 +105,7 @@ static void put_count(bali_text *text, const char *what, uint64_t n) {
     size_t column = COUNT_EDGE > digits.length ? COUNT_EDGE - digits.length : 0;
     bali_text_pad(text, column);
     bali_text_puts(text, bali_text_string(&digits));
+    text->failed |= digits.failed;
     bali_text_free(&digits);
 }
 

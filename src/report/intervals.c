@@ -31,9 +31,14 @@ static bal_status interval(bali_intervals *intervals, double a, double b, double
 }
 
 bal_status bali_intervals_row(bali_intervals *intervals, const double *post, size_t r, double *low, double *high, bal_error *err) {
+    double before = 0, after = 0; /* what stands on each side of a cell: a total less the cell would lose small ones */
     for (size_t k = 0; k < r; k++) {
-        double others = 0; /* summed anew for every cell: a total less the cell would lose small ones */
-        for (size_t other = 0; other < r; other++) others += other == k ? 0 : post[other];
+        low[k] = before;
+        before += post[k];
+    }
+    for (size_t k = r; k-- > 0;) {
+        double others = low[k] + after;
+        after += post[k];
         low[k] = high[k] = NAN;
         if (post[k] > 0 && others > 0) {
             bal_status status = interval(intervals, post[k], others, &low[k], &high[k], err);

@@ -54,6 +54,17 @@ size_t bali_list_thin_rows(const bal_fit *fit, bali_row *list, size_t most) {
     return found;
 }
 
+/* Bytes that the first n characters of a text take. */
+static size_t bytes_of_characters(const char *bytes, size_t length, size_t n) {
+    size_t at = 0;
+    for (; n > 0 && at < length; n--) {
+        uint32_t character;
+        size_t size = bali_utf8_next(bytes + at, length - at, &character);
+        at += size > 0 ? size : 1;
+    }
+    return at;
+}
+
 void bali_put_row_name(bali_text *text, const bal_network *network, size_t variable, size_t row, size_t width) {
     bali_text name = {0};
     const char *label = bal_domain_name(bal_network_domain(network), variable);
@@ -64,14 +75,10 @@ void bali_put_row_name(bali_text *text, const bal_network *network, size_t varia
         bali_text_puts(&name, " | ");
         bali_put_configuration(&name, network, variable, row);
     }
-    size_t kept = name.length, characters = bali_utf8_count(bali_text_string(&name), name.length);
-    while (characters > width && kept > 0) { /* drop whole characters, leaving three places for dots */
-        size_t room = width > 3 ? width - 3 : 0;
-        do kept--;
-        while (kept > 0 && ((unsigned char)name.bytes[kept] & 0xC0) == 0x80);
-        if (bali_utf8_count(name.bytes, kept) <= room) break;
-    }
-    bali_text_add(text, bali_text_string(&name), kept);
+    const char *bytes = bali_text_string(&name);
+    size_t kept = bytes_of_characters(bytes, name.length, width);
+    if (kept < name.length) kept = bytes_of_characters(bytes, name.length, width > 3 ? width - 3 : 0);
+    bali_text_add(text, bytes, kept);
     if (kept < name.length) bali_text_puts(text, "...");
     text->failed |= name.failed;
     bali_text_free(&name);

@@ -158,7 +158,7 @@ def main():
     parser.add_argument("program")
     parser.add_argument("cases", nargs="*", metavar="CASE")
     parser.add_argument("--update", action="store_true")
-    options = parser.parse_args()
+    options = parser.parse_intermixed_args()
     program = os.path.abspath(options.program)
     passed = failed = 0
     with tempfile.TemporaryDirectory(prefix="ballast-cases-") as scratch:

@@ -34,8 +34,8 @@ class Options(ProgramTest):
                 tried += 1
                 done = self.refused(command, option, "--" + option.name, value)
                 self.assert_error(done, "bad-value", "--%s; give " % option.name)
-                joined = self.refused(command, option, "--%s=%s" % (option.name, value))
-                self.assertEqual(joined.err, done.err)
+            joined = self.refused(command, option, "--%s=%s" % (option.name, NO_NUMBERS[-1]))
+            self.assertEqual(joined.err, done.err)
         self.assertGreater(tried, 200)
 
     def ranges(self):

@@ -241,7 +241,9 @@ START_TEST(a_cell_may_have_a_mebibyte) {
         {BALI_CSV_CELL_LIMIT, true, NULL},           {BALI_CSV_CELL_LIMIT + 1, true, "unclosed-quote"},
         {3 * BALI_CSV_CELL_LIMIT, false, "cell-too-long"}, {3 * BALI_CSV_CELL_LIMIT, true, "unclosed-quote"},
     };
-    static const size_t chunks[] = {0, 4096, BALI_CSV_CELL_LIMIT - 1, BALI_CSV_CELL_LIMIT + 3, 5 * BALI_CSV_CELL_LIMIT};
+    /* Some end just before, in and behind the closing quote. */
+    static const size_t chunks[] = {0, 4096, BALI_CSV_CELL_LIMIT - 1, BALI_CSV_CELL_LIMIT + 6, BALI_CSV_CELL_LIMIT + 7,
+                                    BALI_CSV_CELL_LIMIT + 8, 5 * BALI_CSV_CELL_LIMIT};
     for (size_t i = 0; i < sizeof cases / sizeof cases[0]; i++) {
         bali_text text = {0};
         bali_text_puts(&text, cases[i].quoted ? "a,b\nx,\"" : "a,b\nx,");
@@ -455,6 +457,29 @@ START_TEST(a_file_is_read_again_and_hashed_once) {
 }
 END_TEST
 
+START_TEST(a_pass_that_was_left_is_not_hashed) {
+    bali_text text = {0};
+    for (int i = 0; i < 500; i++) bali_text_printf(&text, "line,%d\n", i);
+    const char *path = scratch_file("left.csv", text.bytes, text.length);
+    bal_file_facts facts[2];
+    for (int left = 0; left < 2; left++) {
+        bali_csv_options options = {.chunk_bytes = 100};
+        bali_csv *csv = NULL;
+        bali_csv_cell cell = {.text = ""};
+        ck_assert_int_eq(bali_csv_open(path, &options, &csv, NULL), BAL_OK);
+        for (int i = 0; left && i < 300; i++) ck_assert_int_eq(bali_csv_next(csv, &cell, NULL), BAL_OK);
+        if (left) ck_assert_int_eq(bali_csv_rewind(csv, NULL), BAL_OK);
+        while (cell.text) ck_assert_int_eq(bali_csv_next(csv, &cell, NULL), BAL_OK);
+        bali_csv_facts(csv, &facts[left]);
+        bali_csv_close(csv);
+    }
+    ck_assert_uint_eq(strlen(facts[0].sha256), 64);
+    ck_assert_str_eq(facts[0].sha256, facts[1].sha256);
+    ck_assert_uint_eq(facts[1].bytes, text.length);
+    bali_text_free(&text);
+}
+END_TEST
+
 START_TEST(large_files_are_not_hashed) {
     for (size_t over = 0; over < 2; over++) {
         size_t length = ((size_t)8 << 20) + over;
@@ -534,6 +559,7 @@ static Suite *suite(void) {
     tcase_add_test(files, the_delimiter_is_guessed_or_given);
     tcase_add_test(files, what_is_no_table_is_named);
     tcase_add_test(files, a_file_is_read_again_and_hashed_once);
+    tcase_add_test(files, a_pass_that_was_left_is_not_hashed);
     tcase_add_test(files, large_files_are_not_hashed);
     tcase_add_test(files, memory_may_run_out_anywhere);
     tcase_add_test(files, a_line_is_split_outside_quotes);

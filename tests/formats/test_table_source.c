@@ -379,6 +379,20 @@ START_TEST(a_half_repeated_header_is_told_in_full) {
 }
 END_TEST
 
+/* A column whose name is also one of its outcomes is right in such a line. */
+START_TEST(a_name_may_be_an_outcome) {
+    static const bal_variable_spec variables[] = {{"yes", yes_no, 2}, {"stage", stages, 5}, {"place", places, 3}};
+    bali_text out = {0};
+    static const char text[] = "yes,stage,place\nyes,stage,home\n";
+    read_file(variables, 3, scratch_file("clinic.csv", text, sizeof text - 1), bal_table_options_defaults(), &out);
+    ck_assert_str_eq(bali_text_string(&out), "clinic.csv:2:5: \"stage\" is not an outcome of stage (1, 2, NA, 1-2, stage two) [unknown-label]\n");
+    bali_text_clear(&out);
+    read_file(variables, 1, scratch_file("clinic.csv", "yes\nyes\n", 8), bal_table_options_defaults(), &out);
+    ck_assert_str_eq(bali_text_string(&out), "0: 1\n= 1 -0\n");
+    bali_text_free(&out);
+}
+END_TEST
+
 /* A table of n records that need two bytes a code and more than one block; every 7th lacks a cell. */
 static void make_long_table(bali_text *text, size_t n, const char *end) {
     bali_text_printf(text, "wide,smoker%s", end);
@@ -487,7 +501,7 @@ START_TEST(a_pipe_cannot_be_read_again) {
 END_TEST
 
 START_TEST(a_table_is_read_again) {
-    static const char text[] = "note,smoker,stage,place\n,no,1,home\n\"two\nlines\",NA,2,home\n,yes,NA,home\n";
+    static const char text[] = "note,smoker,stage,place\n,no,1,home\n\"two\nlines\",NA,2,home\n,yes,NA,home\n\n\n";
     listener l = {0};
     bal_notices notices = {listen, &l};
     bal_domain *domain = NULL;
@@ -518,13 +532,16 @@ START_TEST(a_table_is_read_again) {
     ck_assert_uint_eq(facts.bytes, sizeof text - 1);
     ck_assert_uint_eq(strlen(facts.sha256), 64);
     /* Lines of records, the second of which takes two; asked for in the middle of a pass, which goes on. */
-    static const size_t lines[] = {2, 3, 5, 0};
+    static const struct {
+        uint64_t place;
+        size_t line;
+    } lines[] = {{0, 2}, {1, 3}, {2, 5}, {99, 0}};
     ck_assert_int_eq(bal_source_rewind(source, NULL), BAL_OK);
-    for (uint64_t i = 0; i < 4; i++) {
+    for (size_t i = 0; i < 4; i++) {
         bal_error err = {0};
-        bal_source_locate(source, i, &err);
-        ck_assert_uint_eq(err.line, lines[i]);
-        ck_assert_uint_eq(err.record, i + 1);
+        bal_source_locate(source, lines[i].place, &err);
+        ck_assert_uint_eq(err.line, lines[i].line);
+        ck_assert_uint_eq(err.record, lines[i].place + 1);
         ck_assert_int_eq(err.status, BAL_OK);
     }
     bali_text out = {0};
@@ -551,6 +568,39 @@ START_TEST(records_of_one_column_are_located_behind_blank_lines) {
     }
     bal_source_free(source);
     bal_domain_free(domain);
+}
+END_TEST
+
+/* A file as standard input can be read again, and locating must not move it under the pass. */
+START_TEST(standard_input_is_left_in_peace) {
+    bali_text text = {0};
+    make_long_table(&text, 60000, "\n");
+    int kept = dup(STDIN_FILENO), file = open(scratch_file("stdin.csv", text.bytes, text.length), O_RDONLY);
+    ck_assert(file >= 0 && dup2(file, STDIN_FILENO) == STDIN_FILENO && close(file) == 0);
+    bal_domain *domain = NULL;
+    bal_source *source = NULL;
+    bal_block block = {.n_records = 1};
+    bal_table_options options = bal_table_options_defaults();
+    options.missing = BAL_MISSING_DROP;
+    ck_assert_int_eq(bal_domain_create(one, 1, &domain, NULL), BAL_OK);
+    ck_assert_int_eq(bal_table_open(domain, "-", &options, &source, NULL), BAL_OK);
+    for (int i = 0; i < 2; i++) {
+        bal_source_summary summary;
+        for (block.n_records = 1; block.n_records > 0;) {
+            bal_error place = {0};
+            ck_assert_int_eq(bal_source_next(source, &block, NULL), BAL_OK);
+            bal_source_locate(source, 5, &place);
+            ck_assert_uint_eq(place.line, 0);
+            ck_assert_str_eq(place.file, "standard input");
+        }
+        bal_source_summary_get(source, &summary);
+        ck_assert_uint_eq(summary.records + summary.dropped, 60000);
+        ck_assert_int_eq(bal_source_rewind(source, NULL), BAL_OK);
+    }
+    bal_source_free(source);
+    bal_domain_free(domain);
+    bali_text_free(&text);
+    if (kept >= 0) ck_assert(dup2(kept, STDIN_FILENO) == STDIN_FILENO && close(kept) == 0);
 }
 END_TEST
 
@@ -629,11 +679,13 @@ static Suite *suite(void) {
     tcase_add_test(tables, without_a_listener_the_error_sums_up);
     tcase_add_test(tables, ten_of_a_kind_are_told_then_a_count);
     tcase_add_test(tables, a_half_repeated_header_is_told_in_full);
+    tcase_add_test(tables, a_name_may_be_an_outcome);
     tcase_add_test(passes, records_come_in_blocks_whatever_the_line_end);
     tcase_add_test(passes, a_pipe_is_read_once);
     tcase_add_test(passes, a_pipe_cannot_be_read_again);
     tcase_add_test(passes, a_table_is_read_again);
     tcase_add_test(passes, records_of_one_column_are_located_behind_blank_lines);
+    tcase_add_test(passes, standard_input_is_left_in_peace);
     tcase_add_test(passes, a_file_that_changes_is_noticed);
     tcase_add_test(passes, a_file_that_is_not_there_is_told);
     tcase_add_test(passes, memory_may_run_out_anywhere);

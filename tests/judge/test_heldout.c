@@ -119,7 +119,7 @@ static bal_paired pair(const double *bayes, const double *ml, size_t n) {
 }
 
 static void sum_up(const twin_record *records, size_t n_records, bal_heldout *out) {
-    double bayes[MOST_RECORDS], ml[MOST_RECORDS], quadratic_bayes[MOST_RECORDS], quadratic_ml[MOST_RECORDS];
+    double bayes[MOST_RECORDS] = {0}, ml[MOST_RECORDS] = {0}, quadratic_bayes[MOST_RECORDS] = {0}, quadratic_ml[MOST_RECORDS] = {0};
     double others = 0, ml_total = 0;
     for (size_t i = 0; i < n_records; i++) {
         const twin_record *r = &records[i];

@@ -33,6 +33,16 @@ START_TEST(means_are_shares_of_pseudo_counts_and_counts) {
 }
 END_TEST
 
+START_TEST(a_row_of_nothing_at_all_is_uniform) {
+    bal_network *network = network_of("A:#4");
+    bal_cells *nothing = equal_cells(network, 0), *mean = mean_of(nothing, nothing);
+    for (size_t k = 0; k < 4; k++) ck_assert_double_eq(bali_cells_values(mean)[k], 0.25);
+    bal_cells_free(nothing);
+    bal_cells_free(mean);
+    bal_network_free(network);
+}
+END_TEST
+
 /* Laplace 1814, the rule of succession: after 1,826,213 sunrises the odds of one more are 1,826,214 to 1 (recalled from memory). */
 START_TEST(laplaces_rule_of_succession) {
     bal_network *network = network_of("Sun:rises,stays");
@@ -148,12 +158,12 @@ START_TEST(the_order_of_outcomes_does_not_matter) {
 END_TEST
 
 START_TEST(maximum_likelihood_is_raw_frequencies) {
-    bal_network *network = network_of("A:#2 ; B:#3 | A ; C:#1");
-    bal_cells *counts = cells_of(network, (const double[]){1, 3, 0, 0, 0, 2, 0, 6, 0}), *tables = equal_cells(network, NAN);
+    bal_network *network = network_of("A:#2 ; B:#3 | A ; C:#1 ; D:#2");
+    bal_cells *counts = cells_of(network, (const double[]){1, 3, 0, 0, 0, 2, 0, 6, 0, 0, 1}), *tables = equal_cells(network, NAN);
     size_t undefined = 99;
     bal_maximum_likelihood(counts, tables, &undefined);
-    static const double expected[] = {0.25, 0.75, 1.0 / 3, 1.0 / 3, 1.0 / 3, 0.25, 0, 0.75, 1};
-    for (size_t c = 0; c < 9; c++) ck_assert_double_eq(bali_cells_values(tables)[c], expected[c]);
+    static const double expected[] = {0.25, 0.75, 1.0 / 3, 1.0 / 3, 1.0 / 3, 0.25, 0, 0.75, 1, 0, 1};
+    for (size_t c = 0; c < 11; c++) ck_assert_double_eq(bali_cells_values(tables)[c], expected[c]);
     ck_assert_uint_eq(undefined, 2); /* A = 0, and the one row of C */
     bal_maximum_likelihood(counts, tables, NULL);
     bal_cells_free(counts);
@@ -199,6 +209,16 @@ START_TEST(an_interval_that_cannot_be_is_refused) {
 }
 END_TEST
 
+/* A level so near to 1 that (1 + level)/2 rounds to 1, and no quantile is there. */
+START_TEST(a_level_beyond_doubles_is_refused) {
+    double low = 7, high = 8;
+    bal_error err = {0};
+    ck_assert_int_eq(bal_credible_interval(2, 3, 1 - DBL_EPSILON / 2, &low, &high, &err), BAL_ERR_NUMERIC);
+    ck_assert_str_eq(err.code, "no-quantile");
+    ck_assert(low == 7 && high == 8);
+}
+END_TEST
+
 START_TEST(a_row_says_what_it_rests_on) {
     static const struct {
         double records;
@@ -220,6 +240,7 @@ static Suite *suite(void) {
     Suite *s = suite_create("posterior");
     TCase *c = tcase_create("posterior");
     tcase_add_test(c, means_are_shares_of_pseudo_counts_and_counts);
+    tcase_add_test(c, a_row_of_nothing_at_all_is_uniform);
     tcase_add_test(c, laplaces_rule_of_succession);
     tcase_add_test(c, cooper_and_herskovits_expectation);
     tcase_add_loop_test(c, no_record_gives_the_prior, 1, 11);
@@ -228,6 +249,7 @@ static Suite *suite(void) {
     tcase_add_test(c, maximum_likelihood_is_raw_frequencies);
     tcase_add_test(c, intervals_are_equal_tailed);
     tcase_add_loop_test(c, an_interval_that_cannot_be_is_refused, 0, sizeof bad_intervals / sizeof bad_intervals[0]);
+    tcase_add_test(c, a_level_beyond_doubles_is_refused);
     tcase_add_test(c, a_row_says_what_it_rests_on);
     suite_add_tcase(s, c);
     return s;

@@ -80,6 +80,7 @@ static const struct {
     {0, 1, 0, {10, 30, 5, 5, 0, 25, 50, 125}},
     {8, 3, 0, {6, 18, 12, 12, 0, 3, 6, 15}},
     {0, 0.5, 0, {5, 15, 2.5, 2.5, 0, 12.5, 25, 62.5}},
+    {0.5, 1, 0, {0.125, 0.375, 0.25, 0.25, 0, 0.0625, 0.125, 0.3125}}, /* worth less than a case */
     {24, 1, 0.5, {9, 15, 10, 10, 4, 5.5, 7, 11.5}},
 };
 
@@ -168,6 +169,7 @@ START_TEST(a_prior_says_what_it_is) {
     bal_prior_options defaults = bal_prior_options_defaults();
     ck_assert_int_eq(defaults.kind, BAL_PRIOR_BDEU);
     ck_assert_int_eq(defaults.choice, BAL_STRENGTH_BY_MARGINAL_LIKELIHOOD);
+    ck_assert_double_eq(defaults.strength, 1);
     bal_prior *prior = open_prior(network, BAL_PRIOR_JEFFREYS, BAL_STRENGTH_BY_LEAVE_ONE_OUT);
     bal_network_free(network); /* the prior holds it */
     ck_assert_int_eq(bal_prior_kind_of(prior), BAL_PRIOR_JEFFREYS);

@@ -257,6 +257,30 @@ START_TEST(equivalent_structures_score_the_same_under_bdeu) {
 }
 END_TEST
 
+START_TEST(the_order_of_variables_and_outcomes_does_not_matter) {
+    random_case c;
+    set_up(&c, _i, 80);
+    bal_network *reversed = reversed_network(c.network);
+    int *codes = reversed_codes(c.network, c.codes, c.n_records);
+    bal_cells *counts = counts_of(reversed, codes, c.n_records);
+    bal_prior *prior = simple_prior(c.network, BAL_PRIOR_BDEU, 2.5), *prior_reversed = simple_prior(reversed, BAL_PRIOR_BDEU, 2.5);
+    bal_cells *alpha = equal_cells(c.network, 0), *alpha_reversed = equal_cells(reversed, 0);
+    bal_prior_fill(prior, 2.5, alpha);
+    bal_prior_fill(prior_reversed, 2.5, alpha_reversed);
+    bal_scores one = scores_of(alpha, c.counts), other = scores_of(alpha_reversed, counts);
+    ck_assert(near(other.log_marginal_likelihood, one.log_marginal_likelihood, 1e-14));
+    ck_assert(near(other.leave_one_out, one.leave_one_out, 1e-14));
+    free(codes);
+    bal_cells_free(counts);
+    bal_cells_free(alpha);
+    bal_cells_free(alpha_reversed);
+    bal_prior_free(prior);
+    bal_prior_free(prior_reversed);
+    bal_network_free(reversed);
+    tear_down(&c);
+}
+END_TEST
+
 START_TEST(no_record_scores_nothing) {
     random_case c;
     set_up(&c, _i, 0);
@@ -361,6 +385,7 @@ static Suite *suite(void) {
     tcase_add_loop_test(c, leaving_one_out_is_what_brute_force_gives, 1, 21);
     tcase_add_loop_test(c, the_scores_of_families_sum_up, 1, 6);
     tcase_add_loop_test(c, equivalent_structures_score_the_same_under_bdeu, 1, 11);
+    tcase_add_loop_test(c, the_order_of_variables_and_outcomes_does_not_matter, 1, 11);
     tcase_add_loop_test(c, no_record_scores_nothing, 1, 3);
     tcase_add_test(c, a_structural_zero_is_as_if_it_were_not_there);
     tcase_add_test(c, single_outcomes_score_nothing);

@@ -241,32 +241,39 @@ START_TEST(large_counts_are_settled) {
 }
 END_TEST
 
-/* The same families and counts with variables and outcomes in another order. */
 START_TEST(the_order_of_variables_and_outcomes_does_not_matter) {
-    bal_network *one = network_of("A:a,b ; B:x,y,z | A ; C:p,q | A,B");
-    bal_network *two = network_of("C:q,p | B,A ; B:z,x,y | A ; A:a,b");
-    bal_cells *counts_one = equal_cells(one, 0), *counts_two = equal_cells(two, 0);
     dice d = dice_of(_i);
-    for (size_t i = 0; i < 40; i++) {
-        int a = (int)roll(&d, 2), b = a ? (int)roll(&d, 3) : 0, c = (int)roll(&d, 2);
-        const int record_one[] = {a, b, c}, record_two[] = {1 - c, (b + 1) % 3, a};
-        bal_cells *more = counts_of(one, record_one, 1);
-        bali_cells_add(counts_one, more);
-        bal_cells_free(more);
-        more = counts_of(two, record_two, 1);
-        bali_cells_add(counts_two, more);
-        bal_cells_free(more);
-    }
+    bal_network *network = random_network(&d, 6, 1, 4, 3), *reversed = reversed_network(network);
+    bal_cells *tables = random_tables(&d, network, 0);
+    int *codes = random_codes(&d, tables, 50, 0), *codes_reversed = reversed_codes(network, codes, 50);
+    bal_cells *counts = counts_of(network, codes, 50), *counts_reversed = counts_of(reversed, codes_reversed, 50);
     for (bal_strength_choice choice = BAL_STRENGTH_BY_MARGINAL_LIKELIHOOD; choice <= BAL_STRENGTH_BY_LEAVE_ONE_OUT; choice++) {
-        bal_prior *prior_one = open_prior(one, BAL_PRIOR_BDEU, choice), *prior_two = open_prior(two, BAL_PRIOR_BDEU, choice);
-        ck_assert_double_eq(settled(prior_one, counts_one).value, settled(prior_two, counts_two).value);
-        bal_prior_free(prior_one);
-        bal_prior_free(prior_two);
+        bal_prior *one = open_prior(network, BAL_PRIOR_BDEU, choice), *other = open_prior(reversed, BAL_PRIOR_BDEU, choice);
+        ck_assert_double_eq(settled(one, counts).value, settled(other, counts_reversed).value);
+        bal_prior_free(one);
+        bal_prior_free(other);
     }
-    bal_cells_free(counts_one);
-    bal_cells_free(counts_two);
-    bal_network_free(one);
-    bal_network_free(two);
+    free(codes);
+    free(codes_reversed);
+    bal_cells_free(tables);
+    bal_cells_free(counts);
+    bal_cells_free(counts_reversed);
+    bal_network_free(network);
+    bal_network_free(reversed);
+}
+END_TEST
+
+/* Counts of weighted records, some below 1. */
+START_TEST(fractional_counts_are_settled) {
+    bal_network *network = network_of("A:#2 ; B:#3 | A");
+    bal_cells *counts = cells_of(network, (const double[]){6.25, 4.5, 0.25, 5.75, 0.25, 0.5, 0.5, 3.5});
+    for (bal_prior_kind kind = BAL_PRIOR_BDEU; kind <= BAL_PRIOR_JEFFREYS; kind++) {
+        bal_prior *prior = open_prior(network, kind, BAL_STRENGTH_BY_MARGINAL_LIKELIHOOD);
+        check_choice(prior, counts, 2001, 0);
+        bal_prior_free(prior);
+    }
+    bal_cells_free(counts);
+    bal_network_free(network);
 }
 END_TEST
 
@@ -318,6 +325,7 @@ static Suite *suite(void) {
     tcase_add_loop_test(c, the_printed_value_reproduces_the_pseudo_counts, 1, 6);
     tcase_add_loop_test(c, large_counts_are_settled, 0, sizeof large / sizeof large[0]);
     tcase_add_loop_test(c, the_order_of_variables_and_outcomes_does_not_matter, 1, 11);
+    tcase_add_test(c, fractional_counts_are_settled);
     tcase_add_test(c, counts_in_a_structural_zero_have_no_strength);
     tcase_add_test(c, settling_survives_failing_allocations);
     suite_add_tcase(s, c);

@@ -70,6 +70,23 @@ START_TEST(a_bad_network_is_refused) {
 }
 END_TEST
 
+/* A cycle of names as long as they may be: cut between characters, and the advice still stands at the end. */
+START_TEST(a_cycle_of_long_names_is_told_briefly) {
+    char text[12 * 600], e_acute[253], *at = text;
+    for (size_t i = 0; i < 252; i += 2) memcpy(e_acute + i, "\xC3\xA9", 3);
+    for (int v = 0; v < 12; v++)
+        at += sprintf(at, "%s%c%s:a,b | %c%s", v ? ";" : "", 'A' + v, e_acute, 'A' + (v + 1) % 12, e_acute);
+    bal_network *network;
+    bal_error err = {0};
+    ck_assert_int_eq(network_try(text, 0, &network, &err), BAL_ERR_DATA);
+    ck_assert_str_eq(err.code, "cycle");
+    ck_assert_ptr_nonnull(strstr(err.message, " -> ... (12 arcs) -> "));
+    ck_assert_str_eq(err.message + strlen(err.message) - 20, "; remove one of them");
+    ck_assert_msg(!strstr(err.message, "\\x"), "%s", err.message); /* no half of a character */
+    bal_network_free(network);
+}
+END_TEST
+
 /* A child of n_outcomes with n_parents of parent_outcomes each. */
 static bal_status wide_family(size_t n_parents, size_t parent_outcomes, size_t n_outcomes, size_t max_cells, bal_network **out, bal_error *err) {
     char text[4096];
@@ -181,6 +198,7 @@ static Suite *suite(void) {
     tcase_add_test(c, a_network_says_its_sizes);
     tcase_add_test(c, the_order_has_parents_first);
     tcase_add_loop_test(c, a_bad_network_is_refused, 0, sizeof refusals / sizeof refusals[0]);
+    tcase_add_test(c, a_cycle_of_long_names_is_told_briefly);
     tcase_add_loop_test(c, a_family_that_overflows_is_refused, 0, sizeof too_wide / sizeof too_wide[0]);
     tcase_add_test(c, the_limit_itself_is_allowed);
     tcase_add_test(c, a_parent_out_of_range_is_refused);

@@ -6,6 +6,7 @@ import xml.etree.ElementTree as ElementTree
 
 import numpy as np
 
+
 class Network:
     """An XMLBIF file as plain Python: families in the order of the VARIABLE elements."""
 
@@ -16,8 +17,8 @@ class Network:
         self.outcomes = {v.findtext("NAME").strip(): [o.text.strip() for o in v.findall("OUTCOME")]
                          for v in root.findall("VARIABLE")}
         self.parents = {name: [] for name in self.outcomes}
-        self.tables, self.counts, self.row_ess = {}, {}, {}
-        self.fitted = False
+        self.tables, self.counts, self.pseudo_counts, self.row_ess = {}, {}, {}, {}
+        self.properties = dict(_parts_of(p.text) for p in root.findall("PROPERTY"))
         for definition in root.findall("DEFINITION"):
             self._read(definition)
 
@@ -28,13 +29,13 @@ class Network:
         if definition.find("TABLE") is not None:
             self.tables[name] = np.array(definition.findtext("TABLE").split(), dtype=float).reshape(shape)
         for text in definition.findall("PROPERTY"):
-            key, value = (part.strip() for part in text.text.split("=", 1))
+            key, value = _parts_of(text.text)
             if key == "ballast.counts":
                 self.counts[name] = np.array(value.split(), dtype=float).reshape(shape)
+            elif key == "ballast.pseudo-counts":
+                self.pseudo_counts[name] = np.array(value.split(), dtype=float).reshape(shape)
             elif key == "ballast.row-ess":
                 self.row_ess[name] = np.array(value.split(), dtype=float) * np.ones(shape[0])
-            elif key == "ballast.pseudo-counts":
-                self.fitted = True
 
     def shape(self, name):
         """Rows and outcomes of a family."""
@@ -49,6 +50,12 @@ class Network:
         shapes = [self.shape(name) for name in self.outcomes]
         return {"name": self.name, "variables": len(self.outcomes), "arcs": sum(map(len, self.parents.values())),
                 "cells": sum(q * r for q, r in shapes), "free_parameters": sum(q * (r - 1) for q, r in shapes)}
+
+
+def _parts_of(text):
+    """Key and value of a PROPERTY."""
+    key, _, value = text.partition("=")
+    return key.strip(), value.strip()
 
 
 class Table:

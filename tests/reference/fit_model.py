@@ -70,7 +70,8 @@ class Quantile:
             guess = special.betaincinv(a, b, p)
         if guess > 0 and abs(x - guess) <= relative * guess:
             return True
-        return _below(a, b, mpf(x) * (1 - mpf(relative)) - mpf(5e-324), p) and _above(a, b, mpf(x) * (1 + mpf(relative)) + mpf(5e-324), p)
+        width = mpf(x) * mpf(relative) + mpf(5e-324)
+        return _below(a, b, mpf(x) - width, p) and _above(a, b, mpf(x) + width, p)
 
     def __repr__(self):
         return "the %.17g quantile of Beta(%.17g, %.17g)" % (self.key[2], self.key[0], self.key[1])
@@ -130,7 +131,7 @@ def expected_others(network, counts, used, got):
     listed = []
     for kind in PRIORS:
         usable = kind != "expert" or (network.row_ess.keys() == network.outcomes.keys() == network.tables.keys()
-                                      and not network.fitted)
+                                      and not network.pseudo_counts)
         if kind == used or not usable:
             continue
         unit = unit_pseudo_counts(network, {"kind": kind})
@@ -168,8 +169,8 @@ def expected_fit(network, table, prior, got, level=0.95, folds=10, seed=1, count
         heldout = HeldOut(network, table, prior, folds, seed).nearest(got["heldout"]["bayes"]["log_likelihood"])
     chosen = prior.get("by", "given")
     return dict(head("fit", network, table, records),
-                prior={"kind": prior["kind"], "ess": strength if ess_kind else None, "ess_chosen": chosen if ess_kind else None,
-                       "strength": None, "lean": None, "scale": None if ess_kind else strength,
+                prior={"kind": prior["kind"], "ess": strength if ess_kind else None,
+                       "ess_chosen": chosen if ess_kind else None, "strength": None, "lean": None, "scale": None if ess_kind else strength,
                        "scale_chosen": None if ess_kind else chosen, "row_ess": prior.get("row_ess"),
                        "floor": prior.get("floor", 0) if prior["kind"] == "expert" else None},
                 level=level,
@@ -180,8 +181,8 @@ def expected_fit(network, table, prior, got, level=0.95, folds=10, seed=1, count
 
 
 def expected_check(network, table, counts=None):
-    """The JSON of `check`: shares of records alone in a row (cell) of some family estimate the missing mass (Good 1953). From counts
-    alone the share for each family is known, that for any family is not."""
+    """The JSON of `check`: shares of records alone in a row (cell) of some family estimate the missing mass (Good 1953).
+    From counts alone the share for each family is known, that for any family is not."""
     if counts is None:
         counts = tally(network, where(network, table))
     records = next(iter(counts.values())).sum()

@@ -63,7 +63,7 @@ def raw_frequencies(counts):
 
 
 def judge_ml(counts, places, chosen):
-    """Which chosen records maximum likelihood calls impossible, and which meet a row without records (and are not impossible)."""
+    """Which chosen records maximum likelihood calls impossible, and which others meet a row without records."""
     impossible, empty = np.zeros(chosen.sum(), dtype=bool), np.zeros(chosen.sum(), dtype=bool)
     for name, (row, outcome) in places.items():
         n, total = counts[name][row[chosen], outcome[chosen]], counts[name].sum(axis=1)[row[chosen]]

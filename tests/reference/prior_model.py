@@ -4,6 +4,7 @@ import math
 import numpy as np
 from scipy import optimize, special
 
+
 def unit_pseudo_counts(network, prior):
     """Pseudo-counts at strength 1. prior: {"kind", "row_ess", "floor"}."""
     unit = {}
@@ -60,7 +61,7 @@ class Profile:
         return (n * pairs[:, 0] / (alpha + (n - 1)) * times).sum()
 
     def best(self):
-        """ln of the best strength between 0.01 and 10000: the best point of 61, then the peak beside it. None if all are as good."""
+        """ln of the best strength between 0.01 and 10000: the best point of 61, then the peak beside it; None if all are equal."""
         grid = np.linspace(math.log(0.01), math.log(10000), 61)
         values = self.value(grid)
         if np.ptp(values) <= 1e-10 * max(1, abs(values[0])):
@@ -78,8 +79,8 @@ class Profile:
 
 
 def log_pochhammer(alpha, n):
-    """ln of alpha (alpha + 1) ... (alpha + n - 1). The difference of log-gammas loses digits for large alpha, where a product of few
-    factors does not."""
+    """ln of alpha (alpha + 1) ... (alpha + n - 1). The difference of log-gammas loses digits for large alpha, where a
+    product of few factors does not."""
     few = 16
     value = special.gammaln(alpha + n) - special.gammaln(alpha)
     product = np.prod([np.where(i < n, alpha + i, 1.0) for i in range(few)], axis=0)
@@ -93,8 +94,8 @@ def _distinct(pairs):
 
 
 def strengths(unit, counts, by, slack=1e-4):
-    """The roundings to three digits that a search to 1e-4 in ln strength may give; 1 where the score is the same everywhere, as it is
-    without records or with a single one."""
+    """The roundings to three digits that a search to 1e-4 in ln strength may give; 1 where the score is the same everywhere,
+    as it is without records or with a single one."""
     best = Profile(unit, counts, by).best()
     if best is None:
         return [1.0]

@@ -3,6 +3,7 @@
 
 usage: test_fit.py PROGRAM
 """
+import hashlib
 import os
 import random
 import sys
@@ -64,8 +65,8 @@ def compare(trial, name, wanted, got):
 # ---------------------------------------------------------------- networks and tables
 
 def random_network(path, seed):
-    """Some variables in an order that is not that of the arcs, labels that need quotes, tables with zeros, rows worth this and
-    that. Gives a function that draws records from it."""
+    """Some variables in an order that is not that of the arcs, labels that need quotes, tables with zeros, rows worth this
+    and that. Gives a function that draws records from it."""
     rng = random.Random(seed)
     names = ["v%d" % i for i in range(rng.randint(3, 6))]
     words = ["yes", "no", "not done", "1,5 mg", "a \"b\"", "Ödem <2 cm", "β & γ"]
@@ -74,7 +75,7 @@ def random_network(path, seed):
     parents = {name: rng.sample(order[:i], rng.randint(0, min(i, 2))) for i, name in enumerate(order)}
     rows = {name: int(np.prod([len(outcomes[p]) for p in parents[name]])) for name in names}
     tables = {name: [random_row(rng, len(outcomes[name]), seed % 2) for _ in range(rows[name])] for name in names}
-    worth = {name: [rng.uniform(0.3, 30) for _ in range(rows[name])] if seed % 4 < 2 else rng.uniform(0.3, 30) for name in names}
+    worth = {name: [rng.uniform(0.3, 30) for _ in range(rows[name] if seed % 4 < 2 else 1)] for name in names}
     write_network(path, outcomes, parents, tables, row_ess=worth, name="random %d" % seed)
 
     def draw():
@@ -144,8 +145,8 @@ def compare_with_model(trial, program, case, turn):
     for prior_words, prior in priors:
         folds, seed = SPLITS[turn % len(SPLITS)]
         level = LEVELS[turn % len(LEVELS)]
-        got = program.json("fit", network_path, table_path, *words, *prior_words, "--folds", folds, "--seed", seed, "--level", level,
-                           "-o", "fitted.xml")
+        got = program.json("fit", network_path, table_path, *words, *prior_words, "--folds", folds, "--seed", seed,
+                           "--level", level, "-o", "fitted.xml")
         title = "%s %s folds %d seed %d level %g" % (name, " ".join(prior_words) or "default", folds, seed, level)
         wanted = expected_fit(network, table, prior, got, level, folds, seed)
         compare(trial, title, wanted, got)
@@ -161,8 +162,23 @@ def check_file(trial, title, written, got, estimate):
         uniform = [1 / len(family["outcomes"])] * len(family["outcomes"])
         trial.equal(title + " TABLE of " + name, written.tables[name].tolist(), [row[estimate] or uniform for row in rows])
         trial.equal(title + " counts of " + name, written.counts[name].tolist(), [row["counts"] for row in rows])
+        trial.equal(title + " pseudo-counts of " + name, written.pseudo_counts[name].tolist(),
+                    [row["pseudo_counts"] for row in rows])
         trial.equal(title + " parents of " + name, written.parents[name], family["parents"])
         trial.equal(title + " outcomes of " + name, written.outcomes[name], family["outcomes"])
+
+
+    trial.equal(title + " ballast.records", float(written.properties["ballast.records"]), got["data"]["records"])
+    ess = written.properties.get("ballast.ess")
+    trial.equal(title + " ballast.ess", ess and float(ess), got["prior"]["ess"])
+    trial.equal(title + " ballast.parts", written.properties["ballast.parts"], part_of(written))
+
+
+def part_of(written):
+    """SHA-256 of the counts as text: a line a family, its name and its counts in TABLE order."""
+    lines = [" ".join([name] + ["%d" % n for n in counts.ravel()]) + "\n" for name, counts in
+             ((name, written.counts[name]) for name in written.outcomes)]
+    return hashlib.sha256("".join(lines).encode("utf-8")).hexdigest()
 
 
 def without(result, *keys):
@@ -170,8 +186,8 @@ def without(result, *keys):
 
 
 def check_counts_alone(trial, program, case):
-    """A fit to the counts in the file it wrote gives the same numbers, without records to hold out; the ESS it chose, given, the same
-    file; raw frequencies are written on request."""
+    """A fit to the counts in the file it wrote gives the same numbers, without records to hold out; the ESS it chose, given,
+    the same file; raw frequencies are written on request."""
     name, network, table, _, words = case
     got = read_json(program.run("fit", network, table, *words, "--quiet", "--folds", 0, "--json", "-", "-o", "first.xml"))
     again = program.json("fit", "first.xml", "-o", "second.xml")
@@ -179,7 +195,8 @@ def check_counts_alone(trial, program, case):
         trial.equal("%s: %s from the counts alone" % (name, key), again[key], got[key])
     trial.equal(name + ": nothing held out from counts", again["heldout"], None)
     check_counts_as_data(trial, program, case, got)
-    trial.equal(name + ": parts", _property(program, "second.xml", "ballast.parts"), _property(program, "first.xml", "ballast.parts"))
+    parts = [Network(os.path.join(program.folder, f)).properties["ballast.parts"] for f in ("first.xml", "second.xml")]
+    trial.equal(name + ": parts", parts[1], parts[0])
     program.run("fit", network, table, *words, "--quiet", "--ess", repr(got["prior"]["ess"]), "-o", "given.xml")
     trial.equal(name + ": the ESS given that was chosen", _bytes(program, "given.xml"), _bytes(program, "first.xml"))
     got = program.json("fit", network, table, *words, "--estimate", "ml", "-o", "raw.xml")
@@ -195,16 +212,13 @@ def check_counts_as_data(trial, program, case, got):
         for key in ("log_marginal_likelihood", "loo", "prior", "families"):
             trial.equal("%s: %s, %s" % (name, key, title), again[key], got[key])
     counted = Network(os.path.join(program.folder, "first.xml"))
-    compare(trial, name + " check of counts alone", expected_check(counted, None, counted.counts), program.json("check", "first.xml"))
+    compare(trial, name + " check of counts alone", expected_check(counted, None, counted.counts),
+            program.json("check", "first.xml"))
 
 
 def _bytes(program, name):
     with open(os.path.join(program.folder, name), "rb") as file:
         return file.read()
-
-
-def _property(program, name, key):
-    return [line.strip() for line in _bytes(program, name).decode().splitlines() if "<PROPERTY>%s =" % key in line]
 
 
 def check_shuffled(trial, program, case):
@@ -218,7 +232,8 @@ def check_shuffled(trial, program, case):
     first = program.json("fit", network, table, *words, "--folds", 0, "-o", "first.xml")
     second = program.json("fit", network, "shuffled.csv", *words, "--folds", 0, "-o", "second.xml")
     trial.equal(name + ": shuffled, every number", without(second, "inputs"), without(first, "inputs"))
-    written = [[line for line in _bytes(program, f).splitlines() if b"ballast.inputs" not in line] for f in ("first.xml", "second.xml")]
+    written = [[line for line in _bytes(program, f).splitlines() if b"ballast.inputs" not in line]
+               for f in ("first.xml", "second.xml")]
     trial.equal(name + ": shuffled, every other byte of the file", written[1], written[0])
 
 
@@ -238,18 +253,22 @@ def check_one_by_one(trial, program, case):
     name, network, table, _, words = case
     n = len(Table(table, Network(network)).codes)
     got = program.json("fit", network, table, *words, "--prior", "k2", "--folds", n, "--seed", 5)
-    trial.near(name + ": leave-one-out by folds", got["heldout"]["bayes"]["log_likelihood"], got["loo"]["log_likelihood"], RELATIVE)
+    trial.near(name + ": leave-one-out by folds", got["heldout"]["bayes"]["log_likelihood"], got["loo"]["log_likelihood"],
+               RELATIVE)
 
 
 def check_equivalent(trial, program):
     """Structures that say the same score the same under BDeu: Heckerman, Geiger & Chickering 1995, theorem 4."""
-    outcomes = {"Class": ["1st", "2nd", "3rd", "Crew"], "Sex": ["Male", "Female"], "Age": ["Child", "Adult"], "Survived": ["No", "Yes"]}
+    outcomes = {"Class": ["1st", "2nd", "3rd", "Crew"], "Sex": ["Male", "Female"], "Age": ["Child", "Adult"],
+                "Survived": ["No", "Yes"]}
     orders = [["Class", "Sex", "Age", "Survived"], ["Survived", "Age", "Sex", "Class"], ["Sex", "Survived", "Class", "Age"]]
     for ess in (0.3, 5, 800):
         scores = []
         for order in orders:
-            write_network(os.path.join(program.folder, "full.xml"), outcomes, {name: order[:i] for i, name in enumerate(order)})
-            scores.append(program.json("fit", "full.xml", "titanic.csv", "--ess", ess, "--folds", 0)["log_marginal_likelihood"])
+            parents = {name: order[:i] for i, name in enumerate(order)}
+            write_network(os.path.join(program.folder, "full.xml"), outcomes, parents)
+            got = program.json("fit", "full.xml", "titanic.csv", "--ess", ess, "--folds", 0)
+            scores.append(got["log_marginal_likelihood"])
         for score in scores[1:]:
             trial.near("equivalent structures, ESS %g" % ess, score, scores[0], 1e-12)
 

@@ -332,6 +332,38 @@ bal_network *random_network(dice *d, size_t n, size_t least_outcomes, size_t mos
     return network_of(text);
 }
 
+static void put_reversed_variable(bali_text *text, const bal_network *network, size_t v) {
+    const bal_domain *domain = bal_network_domain(network);
+    size_t n_parents, r = bal_network_outcomes(network, v);
+    const size_t *parents = bal_network_parents(network, v, &n_parents);
+    bali_text_printf(text, "%s:", bal_domain_name(domain, v));
+    for (size_t k = r; k-- > 0;) bali_text_printf(text, "%s%s", k + 1 < r ? "," : "", bal_domain_outcome(domain, v, k));
+    for (size_t p = n_parents; p-- > 0;) bali_text_printf(text, "%s%s", p + 1 < n_parents ? "," : "|", bal_domain_name(domain, parents[p]));
+}
+
+bal_network *reversed_network(const bal_network *network) {
+    bali_text text = {0};
+    size_t n = bal_network_variables(network);
+    for (size_t v = n; v-- > 0;) {
+        if (v + 1 < n) bali_text_putc(&text, ';');
+        put_reversed_variable(&text, network, v);
+    }
+    bal_network *reversed = network_of(bali_text_string(&text));
+    bali_text_free(&text);
+    return reversed;
+}
+
+int *reversed_codes(const bal_network *network, const int *codes, size_t n_records) {
+    size_t n = bal_network_variables(network);
+    int *reversed = make(n_records * n, sizeof *reversed);
+    for (size_t i = 0; i < n_records; i++)
+        for (size_t v = 0; v < n; v++) {
+            int code = codes[i * n + v];
+            reversed[i * n + (n - 1 - v)] = code < 0 ? -1 : (int)bal_network_outcomes(network, v) - 1 - code;
+        }
+    return reversed;
+}
+
 bal_cells *random_tables(dice *d, const bal_network *network, double zeros) {
     bal_cells *tables = equal_cells(network, 0);
     for (size_t v = 0; v < bal_network_variables(network); v++) {

@@ -64,6 +64,10 @@ double chance(dice *d);
 
 /** A network of n variables, with 1 (or least) to most outcomes and up to most_parents parents, in no particular order. */
 bal_network *random_network(dice *d, size_t n, size_t least_outcomes, size_t most_outcomes, size_t most_parents);
+/** The same network with variables, outcomes and every family's parents the other way round. */
+bal_network *reversed_network(const bal_network *network);
+/** Records of a network as the reversed one has them; freed with free(). */
+int *reversed_codes(const bal_network *network, const int *codes, size_t n_records);
 /** Tables of a network; about this share of the cells is zero, though none of the last outcomes. */
 bal_cells *random_tables(dice *d, const bal_network *network, double zeros);
 /** Records drawn from tables, about this share of their cells missing; freed with free(). */
