@@ -74,7 +74,7 @@ BAL_API uint64_t bal_fold_key(uint64_t seed, uint64_t repeat);
  * Fails:  ARGUMENT for folds out of range; DATA beyond BAL_HELDOUT_MOST_RECORDS; whatever the source meets;
  *         MEMORY; NUMERIC.
  * Cost:   two passes over the records, O(records x (variables + arcs)), and folds times the cost of settling the
- *         prior; 8 bytes a cell and fold for the folds' counts, and at most prediction_bytes (or one fold's 48 bytes a
+ *         prior; 8 bytes a cell and fold with records for the folds' counts, and at most prediction_bytes (or one fold's 48 bytes a
  *         cell, if that is more) for their predictions: where that is not enough for all folds, more passes.
  * Source: the impossible/undefined/comparable split is direct; Brier 1950 for the quadratic score.
  */

@@ -91,7 +91,7 @@ static int run(const bali_call *call) {
 
 static const option_id options[] = {OPTION_MISSING,     OPTION_MISSING_LABEL, OPTION_DELIMITER, OPTION_STRICT, OPTION_TABLE_ORDER,
                                     OPTION_MAX_CELLS,   OPTION_MEMORY,        OPTION_REDACT,    OPTION_JSON,   OPTION_QUIET,
-                                    OPTION_HELP,        N_OPTIONS};
+                                    OPTION_THREADS,     OPTION_SEED,          OPTION_HELP,      N_OPTIONS};
 
 const bali_command bali_cmd_check = {
     "check",

@@ -44,6 +44,15 @@ static bal_status write_records(bal_source *source, bali_output *output, bal_err
     return status;
 }
 
+static bal_status write_json(const bali_call *call, const bali_inputs *inputs, const bali_results *results, bal_error *err) {
+    if (!results->json) return BAL_OK;
+    bali_json json = {0};
+    bali_draw_json(inputs->document, &inputs->facts, call->values[OPTION_RECORDS].whole, call->values[OPTION_SEED].whole, &json);
+    bal_status status = json.text.failed ? bali_out_of_memory(err) : bali_output_write(results->json, json.text.bytes, json.text.length, err);
+    bali_json_free(&json);
+    return status;
+}
+
 static bal_status draw(const bali_call *call, bali_console *console, bali_inputs *inputs, bali_results *results, bal_error *err) {
     if (!call->values[OPTION_RECORDS].given || !call->values[OPTION_OUTPUT].given)
         return bal_error_set(err, BAL_ERR_ARGUMENT, "wrong-arguments", "draw needs --records N and -o FILE (- for standard output)");
@@ -60,6 +69,7 @@ static bal_status draw(const bali_call *call, bali_console *console, bali_inputs
     if (status == BAL_OK)
         status = bal_draw_open(tables, call->values[OPTION_RECORDS].whole, call->values[OPTION_SEED].whole, &source, err);
     if (status == BAL_OK) status = write_records(source, results->output, err);
+    if (status == BAL_OK) status = write_json(call, inputs, results, err);
     if (status == BAL_OK) status = bali_results_commit(results, err);
     bal_source_free(source);
     return status;
@@ -78,8 +88,8 @@ static int run(const bali_call *call) {
     return exit;
 }
 
-static const option_id options[] = {OPTION_RECORDS, OPTION_OUTPUT, OPTION_TABLE_ORDER, OPTION_MAX_CELLS, OPTION_QUIET, OPTION_SEED, OPTION_HELP,
-                                    N_OPTIONS};
+static const option_id options[] = {OPTION_RECORDS, OPTION_OUTPUT, OPTION_TABLE_ORDER, OPTION_MAX_CELLS, OPTION_JSON, OPTION_QUIET, OPTION_THREADS,
+                                    OPTION_SEED,    OPTION_HELP,   N_OPTIONS};
 
 const bali_command bali_cmd_draw = {
     "draw",

@@ -1,10 +1,12 @@
 /* ballast explain: what a message's code means. */
 #include "cli/commands.h"
 #include "cli/console.h"
+#include "cli/results.h"
 
 #include "base/memory.h"
 #include "base/names.h"
 #include "base/text.h"
+#include "report/facts.h"
 
 #include <string.h>
 
@@ -43,22 +45,52 @@ static void put_all(bali_text *text) {
     }
 }
 
+static void put_json(bali_json *json, const bal_code *codes, size_t n) {
+    bali_json_object(json, NULL);
+    bali_json_ballast(json, "explain");
+    bali_json_array(json, "codes");
+    for (size_t i = 0; i < n; i++) {
+        bali_json_object(json, NULL);
+        bali_json_string(json, "code", codes[i].code);
+        bali_json_string(json, "cause", codes[i].cause);
+        bali_json_string(json, "example", codes[i].example);
+        bali_json_string(json, "mend", codes[i].mend);
+        bali_json_end_object(json);
+    }
+    bali_json_end_array(json);
+    bali_json_end_object(json);
+}
+
+static bal_status write_json(bali_results *results, const bal_code *codes, size_t n, bal_error *err) {
+    if (!results->json) return BAL_OK;
+    bali_json json = {0};
+    put_json(&json, codes, n);
+    bal_status status = json.text.failed ? bali_out_of_memory(err) : bali_output_write(results->json, json.text.bytes, json.text.length, err);
+    bali_json_free(&json);
+    return status == BAL_OK ? bali_results_commit(results, err) : status;
+}
+
 static int run(const bali_call *call) {
     bal_error err = {0};
     bali_text text = {0};
-    if (call->n_arguments == 0) {
-        put_all(&text);
-    } else {
-        const bal_code *code = bal_code_find(call->arguments[0]);
-        if (!code) return refuse(call->arguments[0], &err);
-        put_one(&text, code);
+    bali_results results = {0};
+    size_t n = 1;
+    const bal_code *codes = call->n_arguments == 0 ? bal_codes(&n) : bal_code_find(call->arguments[0]);
+    if (!codes) return refuse(call->arguments[0], &err);
+    bal_status status = bali_results_open(call, &results, &err);
+    if (status == BAL_OK) status = write_json(&results, codes, n, &err);
+    if (status == BAL_OK && results.page) {
+        if (call->n_arguments == 0) put_all(&text);
+        else put_one(&text, codes);
+        if (text.failed) status = bali_out_of_memory(&err);
     }
-    int exit = text.failed ? (bali_out_of_memory(&err), bali_console_refuse(&err)) : bali_console_print(text.bytes, text.length);
+    bali_results_abandon(&results);
+    int exit = status == BAL_OK ? bali_console_print(bali_text_string(&text), text.length) : bali_console_refuse(&err);
     bali_text_free(&text);
     return exit;
 }
 
-static const option_id options[] = {OPTION_HELP, N_OPTIONS};
+static const option_id options[] = {OPTION_JSON, OPTION_QUIET, OPTION_THREADS, OPTION_SEED, OPTION_HELP, N_OPTIONS};
 
 const bali_command bali_cmd_explain = {
     "explain",

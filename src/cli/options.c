@@ -19,13 +19,11 @@ static const option_spec table[N_OPTIONS] = {
     [OPTION_PRIOR] = {"prior", 0, KIND_WORD, "KIND", "bdeu", .words = prior_words,
                       .help = "bdeu: the ESS spread evenly over a family's cells; k2: 1 a cell; jeffreys: 1/2 a cell; "
                               "expert: NETWORK's own tables, each row worth --row-ess cases"},
-    [OPTION_ESS] = {"ess", 0, KIND_NUMBER_OR_WORD, "N|auto|auto-loo", "auto", .least = 0, .most = 1e12, .above_least = true,
-                    .words = auto_words,
+    [OPTION_ESS] = {"ess", 0, KIND_NUMBER_OR_WORD, "N|auto|auto-loo", "auto", .least = 1e-9, .most = 1e12, .words = auto_words,
                     .help = "equivalent sample size of bdeu, in records; auto: the one with the largest log marginal "
                             "likelihood, auto-loo: with the largest leave-one-out log-likelihood"},
-    [OPTION_SCALE] = {"scale", 0, KIND_NUMBER_OR_WORD, "T|auto", "1", .least = 0, .most = 1e12, .above_least = true,
-                      .words = scale_words, .help = "multiplies every pseudo-count of k2, jeffreys and expert"},
-    [OPTION_ROW_ESS] = {"row-ess", 0, KIND_NUMBER, "N", .least = 0, .most = 1e12, .above_least = true,
+    [OPTION_SCALE] = {"scale", 0, KIND_NUMBER_OR_WORD, "T|auto", "1", .least = 1e-9, .most = 1e12, .words = scale_words, .help = "multiplies every pseudo-count of k2, jeffreys and expert"},
+    [OPTION_ROW_ESS] = {"row-ess", 0, KIND_NUMBER, "N", .least = 1e-9, .most = 1e12,
                         .help = "how many cases each of the expert's rows is worth (default: each row's ballast.row-ess)"},
     [OPTION_PRIOR_FLOOR] = {"prior-floor", 0, KIND_NUMBER, "P", "0", .least = 0, .most = 1, .below_most = true,
                             .help = "share of the uniform row mixed into each of the expert's rows, so that no outcome is "

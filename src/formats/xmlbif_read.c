@@ -3,7 +3,6 @@
 #include "formats/xmlbif.h"
 
 #include "base/memory.h"
-#include "base/names.h"
 #include "base/text.h"
 
 #include <string.h>

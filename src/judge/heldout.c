@@ -71,7 +71,7 @@ static void assign_folds(heldout *h, const bal_block *block) {
 }
 
 /* Goes over all blocks with their records' folds assigned. */
-typedef void (*block_visitor)(heldout *h, const bal_block *block);
+typedef bal_status (*block_visitor)(heldout *h, const bal_block *block, bal_error *err);
 
 static bal_status visit_blocks(heldout *h, block_visitor visit, bal_error *err) {
     bal_status status = bal_source_rewind(h->source, err);
@@ -82,24 +82,31 @@ static bal_status visit_blocks(heldout *h, block_visitor visit, bal_error *err) 
         status = make_room(h, block.n_records, err);
         if (status != BAL_OK) break;
         assign_folds(h, &block);
-        visit(h, &block);
+        status = visit(h, &block, err);
     }
     return status;
 }
 
-static void count_folds(heldout *h, const bal_block *block) {
+/* Only folds with records have counts: a few records in many folds take no more memory than they need. */
+static bal_status count_folds(heldout *h, const bal_block *block, bal_error *err) {
+    bal_status status = BAL_OK;
+    for (size_t t = 0; t < block->n_records && status == BAL_OK; t++)
+        if (!h->fold_counts[h->folds[t]]) status = bal_cells_create(h->network, &h->fold_counts[h->folds[t]], err);
+    if (status != BAL_OK) return status;
     for (size_t v = 0; v < bal_network_variables(h->network); v++) {
         bali_index_family(h->network, v, block, h->cells);
         for (size_t t = 0; t < block->n_records; t++)
             if (h->cells[t] != BALI_NO_CELL) bal_cells_edit(h->fold_counts[h->folds[t]], v)[h->cells[t]] += 1;
     }
+    return BAL_OK;
 }
 
 /* The folds' counts have to make up the whole, or a training part would be something that never was. */
 static bal_status check_fold_counts(const heldout *h, bal_error *err) {
     bal_cells *rest = NULL;
     bal_status status = bal_cells_copy(h->counts, &rest, err);
-    for (size_t f = 0; f < h->n_folds && status == BAL_OK; f++) bali_cells_subtract(rest, h->fold_counts[f]);
+    for (size_t f = 0; f < h->n_folds && status == BAL_OK; f++)
+        if (h->fold_counts[f]) bali_cells_subtract(rest, h->fold_counts[f]);
     for (size_t c = 0; c < bal_network_cells(h->network) && status == BAL_OK; c++)
         if (bali_cells_values(rest)[c] != 0)
             status = bal_error_set(err, BAL_ERR_DATA, "changed-while-read",
@@ -113,6 +120,7 @@ static bal_status fit_without_fold(void *context, size_t task, bal_error *err) {
     heldout *h = context;
     size_t fold = h->first + task;
     bal_cells *training = NULL;
+    if (!h->fold_counts[fold]) return BAL_OK; /* no record to predict */
     bal_status status = bal_cells_copy(h->counts, &training, err);
     if (status == BAL_OK) {
         bali_cells_subtract(training, h->fold_counts[fold]);
@@ -160,7 +168,8 @@ static void add_record(fold_scores *s, const record_outlook *record) {
     }
 }
 
-static void score_block(heldout *h, const bal_block *block) {
+static bal_status score_block(heldout *h, const bal_block *block, bal_error *err) {
+    (void)err;
     size_t n = block->n_records, n_cells = bal_network_cells(h->network);
     for (size_t t = 0; t < n; t++) h->records[t] = (record_outlook){0};
     for (size_t v = 0; v < bal_network_variables(h->network); v++) {
@@ -177,6 +186,7 @@ static void score_block(heldout *h, const bal_block *block) {
     }
     for (size_t t = 0; t < n; t++)
         if (h->folds[t] >= h->first && h->folds[t] < h->last) add_record(&h->scores[h->folds[t]], &h->records[t]);
+    return BAL_OK;
 }
 
 /* Scores folds [first, last) in one pass. */
@@ -282,9 +292,7 @@ static bal_status make_folds(heldout *h, bal_error *err) {
     h->scores = bali_allocate(h->n_folds, sizeof *h->scores);
     h->run = bali_allocate(h->n_folds, sizeof *h->run);
     if (!h->fold_counts || !h->strengths || !h->scores || !h->run) return bali_out_of_memory(err);
-    bal_status status = BAL_OK;
-    for (size_t f = 0; f < h->n_folds && status == BAL_OK; f++) status = bal_cells_create(h->network, &h->fold_counts[f], err);
-    return status;
+    return BAL_OK;
 }
 
 static void free_folds(heldout *h) {

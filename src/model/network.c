@@ -60,16 +60,24 @@ static bal_status size_family(bal_network *network, size_t v, size_t max_cells, 
     return BAL_OK;
 }
 
+/* How many bytes of a name a path shows: 36 at most, whole characters. */
+static int shown_bytes(const char *name) {
+    size_t length = strlen(name);
+    if (length <= 36) return (int)length;
+    for (length = 36; length > 0 && ((unsigned char)name[length] & 0xC0) == 0x80; length--) continue;
+    return (int)length;
+}
+
 static bal_status refuse_cycle(const bal_domain *domain, const size_t *cycle, size_t n_cycle, bal_error *err) {
-    char path[400] = "";
+    char path[440] = ""; /* eight names, two more behind the dots, and the arrows */
     size_t at = 0;
     for (size_t i = 0; i <= n_cycle && at < sizeof path - 1; i++) {
         if (i == 8 && n_cycle > 9) {
             i = n_cycle - 1;
             at += (size_t)snprintf(path + at, sizeof path - at, " -> ... (%zu arcs)", n_cycle);
         }
-        if (at < sizeof path - 1)
-            at += (size_t)snprintf(path + at, sizeof path - at, "%s%.40s", i ? " -> " : "", bal_domain_name(domain, cycle[i % n_cycle]));
+        const char *name = bal_domain_name(domain, cycle[i % n_cycle]);
+        if (at < sizeof path - 1) at += (size_t)snprintf(path + at, sizeof path - at, "%s%.*s", i ? " -> " : "", shown_bytes(name), name);
     }
     bal_status status = bal_error_set(err, BAL_ERR_DATA, "cycle", "the arcs run in a circle: %s; remove one of them", path);
     bal_error_context(err, 0, bal_domain_name(domain, cycle[0]));

@@ -44,7 +44,7 @@ static void put_support(bali_json *json, const bali_check_facts *facts) {
 void bali_check_json(const bali_check_facts *facts, bali_json *json) {
     size_t parameters = bal_network_free_parameters(bal_document_network(facts->document));
     bali_json_object(json, NULL);
-    bali_json_head(json, "check", facts->document, facts->data, facts->counts != NULL);
+    bali_json_head(json, "check", facts->document, NULL, facts->data, facts->counts != NULL);
     if (facts->counts) {
         put_support(json, facts);
         put_rows(json, "rows_without_records", facts->counts, BAL_BASIS_PRIOR);

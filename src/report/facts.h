@@ -53,8 +53,21 @@ typedef struct bali_check_facts {
 void bali_check_text(const bali_check_facts *facts, bali_text *text);
 void bali_check_json(const bali_check_facts *facts, bali_json *json);
 
-/** The opening keys of every JSON result: ballast, inputs, network, data (null without data). */
-void bali_json_head(bali_json *json, const char *command, const bal_document *document, const bali_data_facts *data, bool has_data);
+/** `ballast draw`: what was simulated. */
+void bali_draw_json(const bal_document *document, const bali_data_facts *data, uint64_t records, uint64_t seed, bali_json *json);
+
+/** The key "ballast", with which every JSON result begins. */
+void bali_json_ballast(bali_json *json, const char *command);
+
+/**
+ * The opening keys of a result about a network: ballast, inputs, network, data (null without data).
+ * pseudo_counts  of a fit, whose structural zeros are no free parameters; NULL when there is none
+ */
+void bali_json_head(bali_json *json, const char *command, const bal_document *document, const bal_cells *pseudo_counts,
+                    const bali_data_facts *data, bool has_data);
+
+/** sum over rows of the cells that can happen, less one: all cells can where pseudo_counts is NULL. */
+size_t bali_free_parameters(const bal_network *network, const bal_cells *pseudo_counts);
 
 /** The object {parent: outcome} of a row under a key. */
 void bali_json_given(bali_json *json, const char *key, const bal_network *network, size_t variable, size_t row);

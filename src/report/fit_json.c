@@ -174,7 +174,7 @@ static bal_status put_families(bali_json *json, const bali_fit_facts *facts, bal
 
 bal_status bali_fit_json(const bali_fit_facts *facts, bali_json *json, bal_error *err) {
     bali_json_object(json, NULL);
-    bali_json_head(json, "fit", facts->document, facts->data, true);
+    bali_json_head(json, "fit", facts->document, facts->fit->pseudo_counts, facts->data, true);
     put_prior(json, facts);
     bali_json_string(json, "estimate", facts->maximum_likelihood ? "ml" : "mean");
     bali_json_number(json, "level", facts->level);

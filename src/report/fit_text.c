@@ -30,7 +30,7 @@ static void put_what_went_in(bali_text *text, const bali_fit_facts *facts, bali_
     put_visible(words, data->inputs[0].name);
     bali_text_printf(words, ": %zu variables, %zu arcs, %zu rows, %zu cells, %zu free parameters", bal_network_variables(network),
                      bal_network_arcs(network), bali_count_rows(facts->fit->counts).rows, bal_network_cells(network),
-                     bal_network_free_parameters(network));
+                     bali_free_parameters(network, facts->fit->pseudo_counts));
     put_item(text, "network", words);
     put_visible(words, data->n_inputs > 1 ? data->inputs[1].name : "the network's own counts");
     bali_text_puts(words, ": ");

@@ -15,14 +15,14 @@ static void put_inputs(bali_json *json, const bali_data_facts *data) {
     bali_json_end_array(json);
 }
 
-static void put_network(bali_json *json, const bal_document *document) {
+static void put_network(bali_json *json, const bal_document *document, const bal_cells *pseudo_counts) {
     const bal_network *network = bal_document_network(document);
     bali_json_object(json, "network");
     bali_json_string(json, "name", bal_document_name(document));
     bali_json_whole(json, "variables", bal_network_variables(network));
     bali_json_whole(json, "arcs", bal_network_arcs(network));
     bali_json_whole(json, "cells", bal_network_cells(network));
-    bali_json_whole(json, "free_parameters", bal_network_free_parameters(network));
+    bali_json_whole(json, "free_parameters", bali_free_parameters(network, pseudo_counts));
     bali_json_end_object(json);
 }
 
@@ -48,19 +48,32 @@ static void put_data(bali_json *json, const bal_document *document, const bali_d
     bali_json_end_object(json);
 }
 
-void bali_json_head(bali_json *json, const char *command, const bal_document *document, const bali_data_facts *data, bool has_data) {
+void bali_json_ballast(bali_json *json, const char *command) {
     bali_json_object(json, "ballast");
     bali_json_string(json, "version", BALLAST_VERSION);
     bali_json_whole(json, "schema", 1);
     bali_json_string(json, "command", command);
     bali_json_end_object(json);
+}
+
+void bali_json_head(bali_json *json, const char *command, const bal_document *document, const bal_cells *pseudo_counts,
+                    const bali_data_facts *data, bool has_data) {
+    bali_json_ballast(json, command);
     put_inputs(json, data);
-    put_network(json, document);
+    put_network(json, document, pseudo_counts);
     if (has_data) {
         put_data(json, document, data);
     } else {
         bali_json_null(json, "data");
     }
+}
+
+void bali_draw_json(const bal_document *document, const bali_data_facts *data, uint64_t records, uint64_t seed, bali_json *json) {
+    bali_json_object(json, NULL);
+    bali_json_head(json, "draw", document, NULL, data, false);
+    bali_json_whole(json, "records", records);
+    bali_json_whole(json, "seed", seed);
+    bali_json_end_object(json);
 }
 
 void bali_json_given(bali_json *json, const char *key, const bal_network *network, size_t variable, size_t row) {

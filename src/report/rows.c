@@ -5,6 +5,20 @@
 
 #include <string.h>
 
+size_t bali_free_parameters(const bal_network *network, const bal_cells *pseudo_counts) {
+    size_t free_parameters = 0;
+    for (size_t v = 0; v < bal_network_variables(network) && pseudo_counts; v++) {
+        size_t r = bal_network_outcomes(network, v), rows = bal_network_rows(network, v);
+        const double *alpha = bal_cells_family(pseudo_counts, v);
+        for (size_t row = 0; row < rows; row++, alpha += r) {
+            size_t possible = 0;
+            for (size_t k = 0; k < r; k++) possible += alpha[k] > 0;
+            free_parameters += possible > 0 ? possible - 1 : 0;
+        }
+    }
+    return pseudo_counts ? free_parameters : bal_network_free_parameters(network);
+}
+
 bali_row_counts bali_count_rows(const bal_cells *counts) {
     bali_row_counts c = {0};
     const bal_network *network = bal_cells_network(counts);

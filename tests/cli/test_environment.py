@@ -49,7 +49,8 @@ class Environment(ProgramTest):
         subprocess.run(["localedef", "-i", "de_DE", "-f", "UTF-8", os.path.join(folder, "de_DE.UTF-8")], check=True,
                        capture_output=True, timeout=SECONDS)
         german = {"LOCPATH": folder, "LC_ALL": "de_DE.UTF-8"}
-        said = subprocess.run(["/usr/bin/printf", "%.1f", "1,5"], env=dict(ENVIRONMENT, **german), capture_output=True, timeout=SECONDS)
+        said = subprocess.run(["/usr/bin/printf", "%.1f", "1,5"], env=dict(ENVIRONMENT, **german), capture_output=True,
+                              timeout=SECONDS)
         self.assertEqual(said.stdout, b"1,5", "the locale with a decimal comma does not work, so nothing would be tested")
         wanted = self.outputs()
         for environment in (german, {"LC_ALL": "", "LC_NUMERIC": "de_DE.UTF-8", "LOCPATH": folder}, {"LC_ALL": "C.UTF-8"},
@@ -174,7 +175,8 @@ class HowInputArrives(ProgramTest):
     def test_process_substitution(self):
         """bash hands over a descriptor under a name such as /dev/fd/63."""
         script = '"$0" fit <(cat clinic.xml) <(cat cases.csv) --ess 4 --folds 5 -o out.xml --quiet'
-        done = subprocess.run(["bash", "-c", script, self.program], cwd=self.folder, env=ENVIRONMENT, capture_output=True, timeout=SECONDS)
+        done = subprocess.run(["bash", "-c", script, self.program], cwd=self.folder, env=ENVIRONMENT, capture_output=True,
+                              timeout=SECONDS)
         self.assertEqual(done.returncode, 0, done.stderr)
         hide = lambda content: re.sub(rb"ballast\.inputs = [^<]*", b"", content)
         self.assertEqual(hide(self.read("out.xml")), hide(self.results("clinic.xml", "cases.csv")[0]))
@@ -222,8 +224,9 @@ class Terminal(ProgramTest):
 
     def test_no_escape_codes(self):
         wanted = self.ballast(*FIT, stderr=subprocess.STDOUT).out
-        for environment in ({"TERM": "xterm-256color"}, {"TERM": "dumb"}, {"TERM": ""}, {"COLUMNS": "0"}, {"COLUMNS": "1", "LINES": "1"},
-                            {"COLUMNS": "99999"}, {"COLUMNS": "junk"}, {"NO_COLOR": ""}, {"NO_COLOR": "1"}, {"CLICOLOR_FORCE": "1"}):
+        for environment in ({"TERM": "xterm-256color"}, {"TERM": "dumb"}, {"TERM": ""}, {"COLUMNS": "0"},
+                            {"COLUMNS": "1", "LINES": "1"}, {"COLUMNS": "99999"}, {"COLUMNS": "junk"}, {"NO_COLOR": ""},
+                            {"NO_COLOR": "1"}, {"CLICOLOR_FORCE": "1"}):
             got = self.on_terminal(environment, *FIT)
             self.assertNotIn(b"\x1b", got)
             self.assertNotIn(b"\r", got)

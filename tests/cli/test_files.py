@@ -18,8 +18,8 @@ class Inputs(ProgramTest):
         os.mkdir(self.path("folder"))
         os.symlink("loop", self.path("loop"))
         os.symlink("nowhere", self.path("dangling"))
-        tries = [("nowhere", "No such file"), ("folder", "Is a directory"), ("loop", "Too many levels"), ("dangling", "No such file"),
-                 ("n" * 300, "File name too long"), ("clinic.xml/below", "Not a directory"), ("", "No such file"),
+        tries = [("nowhere", "No such file"), ("folder", "Is a directory"), ("loop", "Too many levels"),
+                 ("dangling", "No such file"), ("n" * 300, "File name too long"), ("clinic.xml/below", "Not a directory"), ("", "No such file"),
                  ("http://127.0.0.1:9/clinic.xml", "No such file"), ("--help", "No such file")]
         for name, reason in tries:
             for words in (["check", "--", name], ["check", "--", "clinic.xml", name], ["fit", "--", name, "cases.csv"],
@@ -34,8 +34,8 @@ class Inputs(ProgramTest):
         self.assert_error(done, "cannot-open", "cases.csv: cannot be opened: Permission denied")
 
     def test_names_that_would_steer_a_terminal(self):
-        for name, shown in ((b"a\nb", "a\\x0Ab"), (b"\x1b[31m", "\\x1B[31m"), (b"\xff\xc0", "\\xFF\\xC0"), (b"\xe2\x80\xae", "\\xE2\\x80\\xAE"),
-                            (b"%s%n", "%s%n"), ("\u00e9".encode(), "\u00e9")):
+        for name, shown in ((b"a\nb", "a\\x0Ab"), (b"\x1b[31m", "\\x1B[31m"), (b"\xff\xc0", "\\xFF\\xC0"),
+                            (b"\xe2\x80\xae", "\\xE2\\x80\\xAE"), (b"%s%n", "%s%n"), ("\u00e9".encode(), "\u00e9")):
             self.assert_error(self.ballast("check", name, status=3), "cannot-open", shown + ": ")
             self.assert_error(self.ballast("check", "clinic.xml", name, status=3), "cannot-open", shown + ": ")
             done = self.ballast(*FIT, "-o", os.path.join(b"nowhere", name), status=3)
@@ -102,8 +102,8 @@ class Outputs(ProgramTest):
         os.symlink("soft", self.path("softer"))
         os.mkfifo(self.path("fifo"))
         before = self.files()
-        for a, b in (("new", "new"), ("new", "./new"), ("new", self.path("new")), ("old", "hard"), ("soft", "softer"), ("new", "soft"),
-                     ("-", "-"), ("-", "/dev/stdout"), ("/dev/stdout", "-"), ("fifo", "./fifo")):
+        for a, b in (("new", "new"), ("new", "./new"), ("new", self.path("new")), ("old", "hard"), ("soft", "softer"),
+                     ("new", "soft"), ("-", "-"), ("-", "/dev/stdout"), ("/dev/stdout", "-"), ("fifo", "./fifo")):
             self.assert_error(self.ballast(*FIT, "-o", a, "--json", b, status=2), "one-output-twice")
         self.assertEqual(self.files(), before)
         self.assertEqual(self.ballast(*FIT, "-o", "new.xml", "--json", "new.json", "--quiet").out, b"")
@@ -123,7 +123,8 @@ class Outputs(ProgramTest):
         os.mkfifo(self.path("fifo"))
         os.mkdir(self.path("folder"), 0o555)
         for name in ("folder/out.xml", "nowhere/out.xml", "folder"):
-            self.assert_error(self.ballast("fit", "clinic.xml", "fifo", "-o", name, status=3, preexec_fn=obey_permissions), "cannot-write")
+            done = self.ballast("fit", "clinic.xml", "fifo", "-o", name, status=3, preexec_fn=obey_permissions)
+            self.assert_error(done, "cannot-write", name)
         self.write("protected", OLD)
         os.chmod(self.path("protected"), 0o444)
         done = self.ballast("fit", "clinic.xml", "fifo", "--json", "protected", status=3, preexec_fn=obey_permissions)
@@ -149,11 +150,11 @@ class Outputs(ProgramTest):
         wanted = self.ballast(*FIT, "-o", "-").out
         os.mkdir(self.path("folder"))
         self.write("folder/old.xml", OLD)
-        for link, target, file in (("soft", "folder/old.xml", "folder/old.xml"), ("dangling", "folder/new.xml", "folder/new.xml")):
+        for link, target in (("soft", "folder/old.xml"), ("dangling", "folder/new.xml")):
             os.symlink(target, self.path(link))
             self.ballast(*FIT, "-o", link)
             self.assertEqual(os.readlink(self.path(link)), target)
-            self.assertEqual(self.read(file), wanted)
+            self.assertEqual(self.read(target), wanted)
 
     def test_a_fifo_and_devices(self):
         wanted = self.ballast(*FIT, "-o", "-").out
@@ -165,7 +166,8 @@ class Outputs(ProgramTest):
         reader.join(SECONDS)
         self.assertEqual(got, [wanted])
         self.ballast(*FIT, "-o", "/dev/null", "--json", "out.json")
-        self.assert_error(self.ballast(*FIT, "-o", "/dev/full", "--quiet", status=3), "cannot-write", "/dev/full", "No space left")
+        done = self.ballast(*FIT, "-o", "/dev/full", "--quiet", status=3)
+        self.assert_error(done, "cannot-write", "/dev/full", "No space left")
         self.assertTrue(os.path.exists("/dev/null") and not os.path.isfile("/dev/null"))
 
     def test_names_of_standard_output(self):
@@ -185,8 +187,8 @@ class Outputs(ProgramTest):
     def test_where_it_runs_does_not_matter(self):
         os.makedirs(self.path("deep/er"))
         at_home = self.ballast(*FIT, "-o", "a.xml", "--json", "a.json").out
-        elsewhere = self.ballast("fit", "../../clinic.xml", self.path("cases.csv"), "-o", "a.xml", "--json", "../../deep/a.json",
-                                 cwd=self.path("deep/er")).out
+        words = ["fit", "../../clinic.xml", self.path("cases.csv"), "-o", "a.xml", "--json", "../../deep/a.json"]
+        elsewhere = self.ballast(*words, cwd=self.path("deep/er")).out
         self.assertEqual(elsewhere, at_home)
         self.assertEqual(self.read("deep/er/a.xml"), self.read("a.xml"))
         self.assertEqual(self.read("deep/a.json"), self.read("a.json"))
@@ -194,7 +196,8 @@ class Outputs(ProgramTest):
     def test_a_folder_that_is_gone(self):
         os.mkdir(self.path("gone"))
         script = 'cd gone && rmdir ../gone && exec "$0" "$@"'
-        done = subprocess.run(["sh", "-c", script, self.program, "fit", self.path("clinic.xml"), self.path("cases.csv"), "-o", "x.xml"],
+        words = ["fit", self.path("clinic.xml"), self.path("cases.csv"), "-o", "x.xml"]
+        done = subprocess.run(["sh", "-c", script, self.program, *words],
                               cwd=self.folder, env=ENVIRONMENT, capture_output=True, timeout=SECONDS)
         self.assertEqual(done.returncode, 3, done.stderr)
         self.assertIn(b"[cannot-write]", done.stderr)

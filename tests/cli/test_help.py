@@ -60,7 +60,8 @@ class Help(ProgramTest):
                 if not option.letter:
                     continue
                 long = self.ballast(name, *option.words("x"), *option.words("x"), status=None)
-                short = self.ballast(name, *option.words("x"), "-" + option.letter, *(["x"] if option.argument else []), status=None)
+                again = ["-" + option.letter] + (["x"] if option.argument else [])
+                short = self.ballast(name, *option.words("x"), *again, status=None)
                 self.assertEqual(long.err, short.err)
                 self.assertIn(b"[option-twice]", short.err)
 
@@ -80,7 +81,8 @@ class Help(ProgramTest):
                     continue
                 tried += 1
                 beside = words + GOES_WITH.get(option.name, [])
-                self.assertEqual(self.outputs(beside), self.outputs(beside + option.words(value)), "%s --%s" % (name, option.name))
+                given = self.outputs(beside + option.words(value))
+                self.assertEqual(self.outputs(beside), given, "%s --%s" % (name, option.name))
         self.assertGreater(tried, 15)
 
     def test_another_value_than_the_default_is_another_result(self):

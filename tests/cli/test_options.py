@@ -11,7 +11,8 @@ from bench import ProgramTest, commands, main, options
 
 NO_NUMBERS = ["10x", "", " ", "1e400", "-1", "nan", "inf", "-inf", " 5", "5 ", "5\n", "1,5", "1_000", "0x10", "1e", ".", "--5",
               "18446744073709551616", "\u0665", "1\x1b[2J"]
-ARGUMENTS = {"check": ["missing.xml"], "fit": ["missing.xml"], "draw": ["missing.xml", "--records", "3", "-o", "-"], "explain": []}
+ARGUMENTS = {"check": ["missing.xml"], "fit": ["missing.xml"], "explain": [],
+             "draw": ["missing.xml", "--records", "3", "-o", "-"]}
 
 
 class Options(ProgramTest):
@@ -70,7 +71,8 @@ class Options(ProgramTest):
             self.assert_error(done, "bad-value", "--" + option.name)
 
     def test_option_twice(self):
-        values = {"prior": "k2", "estimate": "ml", "missing": "drop", "table-order": "for-slowest", "level": "0.5", "prior-floor": "0.5"}
+        values = {"prior": "k2", "estimate": "ml", "missing": "drop", "table-order": "for-slowest", "level": "0.5",
+                  "prior-floor": "0.5"}
         for command, option in self.each():
             words = option.words(values.get(option.name, "1")) * 2
             arguments = [word for word in ARGUMENTS[command] if word == "missing.xml"]
@@ -128,8 +130,9 @@ class Options(ProgramTest):
 
     def test_very_long_words(self):
         word = "x" * 100000
+        fit = ["fit", "clinic.xml", "cases.csv"]
         for words in ([word], ["fit", "--" + word], ["fit", word], ["fit", "missing.xml", "--ess", word], ["explain", word],
-                      ["fit", "clinic.xml", "cases.csv", "-o", word], ["fit", "clinic.xml", "cases.csv", "--missing-label", word]):
+                      [*fit, "-o", word], [*fit, "--missing-label", word]):
             done = self.ballast(*words, status=None)
             self.assertIn(done.status, (0, 2, 3))
             self.assertLess(len(done.err), 4096)

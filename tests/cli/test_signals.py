@@ -124,7 +124,7 @@ class Signals(ProgramTest):
     def test_many_threads(self):
         self.ballast("draw", "clinic.xml", "--records", "20000", "-o", "many.csv")
         for i, number in enumerate(ENDING * 3):
-            process = self.start("fit", "clinic.xml", "many.csv", "--folds", "20000", "--threads", "8", "-o", "out.xml", "--quiet")
+            process = self.start("fit", "clinic.xml", "many.csv", "--folds", "20000", "--threads", "8", "-o", "out.xml")
             time.sleep(0.05 + 0.01 * i)
             self.end(process, number)
             self.assertFalse(os.path.exists(self.path("out.xml")))

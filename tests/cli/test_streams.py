@@ -18,7 +18,8 @@ TALKING = [
     ["check", "clinic.xml", "cases.csv", "--json", "-"], ["fit", "clinic.xml", "cases.csv"],
     ["fit", "clinic.xml", "cases.csv", "--json", "-"], ["fit", "clinic.xml", "cases.csv", "-o", "-"],
     ["fit", "clinic.xml", "cases.csv", "-o", "/dev/stdout"], ["draw", "small.xml", "--records", "1", "-o", "-"],
-    ["draw", "clinic.xml", "--records", "5000", "-o", "-"],
+    ["draw", "clinic.xml", "--records", "5000", "-o", "-"], ["draw", "small.xml", "--records", "1", "-o", "x.csv", "--json", "-"],
+    ["explain", "--json", "-"],
 ]
 FIT = ["fit", "clinic.xml", "cases.csv", "--ess", "0.5"]
 WRITING = FIT + ["-o", "out.xml", "--json", "out.json"]

@@ -84,6 +84,7 @@ static void read_file(const bal_variable_spec *variables, size_t n, const char *
     if (status == BAL_OK) status = pass(source, &l, out, &err);
     else bali_text_puts(out, bali_text_string(&l.told));
     ck_assert_int_eq(status, err.status);
+    ck_assert(status == BAL_OK || bal_code_find(err.code) != NULL);
     if (status != BAL_OK && l.first.status == BAL_OK) put_error(out, &err);
     if (l.first.status != BAL_OK) {
         ck_assert_str_eq(err.code, l.first.code);

@@ -7,6 +7,7 @@
 #include <math.h>
 #include <stdlib.h>
 #include <string.h>
+#include <time.h>
 
 /* ---- the slow, obvious twin: one record after another, every fold refitted from its records ---- */
 
@@ -419,7 +420,54 @@ START_TEST(undefined_alone_leaves_ml_without_a_total) {
 }
 END_TEST
 
+/* Variables, outcomes and parents the other way round: the folds are of records, so nothing changes but last bits. */
+START_TEST(the_order_of_variables_and_outcomes_does_not_matter) {
+    trial t, other;
+    set_up(&t, _i, 100, 7, 0.02, 0);
+    other = t;
+    other.network = reversed_network(t.network);
+    other.codes = reversed_codes(t.network, t.codes, t.n_records);
+    bal_prior *prior = open_prior(t.network, BAL_PRIOR_BDEU, BAL_STRENGTH_BY_MARGINAL_LIKELIHOOD);
+    bal_prior *prior_reversed = open_prior(other.network, BAL_PRIOR_BDEU, BAL_STRENGTH_BY_MARGINAL_LIKELIHOOD);
+    t.prior = prior;
+    other.prior = prior_reversed;
+    bal_heldout one = held_out(&t), two = held_out(&other);
+    check_heldout(&two, &one, _i);
+    bal_prior_free(prior);
+    bal_prior_free(prior_reversed);
+    tear_down(&other);
+    tear_down(&t);
+}
+END_TEST
+
+/* As many folds as there may be, of a large table and few records: seconds would mean that empty folds are fitted too. */
+START_TEST(empty_folds_cost_nothing) {
+    bal_network *network = network_of("A:#50 ; B:#50 | A");
+    static const int codes[] = {0, 1, 2, 3, 4, 5};
+    bal_prior *prior = open_prior(network, BAL_PRIOR_BDEU, BAL_STRENGTH_BY_MARGINAL_LIKELIHOOD);
+    bal_cells *counts = counts_of(network, codes, 3);
+    bal_source *source = plain_source(network, codes, 3);
+    bal_heldout_options options = bal_heldout_options_defaults();
+    options.folds = BAL_HELDOUT_MOST_FOLDS;
+    bal_heldout out;
+    clock_t start = clock();
+    ck_assert_int_eq(bal_heldout_folds(prior, counts, source, &options, &out, NULL), BAL_OK);
+    ck_assert_msg((double)(clock() - start) / CLOCKS_PER_SEC < 1, "%g s", (double)(clock() - start) / CLOCKS_PER_SEC);
+    ck_assert_uint_eq(out.records, 3);
+    bal_source_free(source);
+    bal_cells_free(counts);
+    bal_prior_free(prior);
+    bal_network_free(network);
+}
+END_TEST
+
 /* ---- refusals ---- */
+
+START_TEST(ten_folds_and_seed_1_are_the_defaults) {
+    bal_heldout_options options = bal_heldout_options_defaults();
+    ck_assert(options.folds == 10 && options.seed == 1 && options.threads == 1 && options.prediction_bytes == 268435456);
+}
+END_TEST
 
 static const struct {
     size_t folds;
@@ -542,6 +590,9 @@ static Suite *suite(void) {
     tcase_add_test(c, a_table_by_hand);
     tcase_add_test(c, impossible_goes_before_undefined);
     tcase_add_test(c, undefined_alone_leaves_ml_without_a_total);
+    tcase_add_loop_test(c, the_order_of_variables_and_outcomes_does_not_matter, 1, 6);
+    tcase_add_test(c, empty_folds_cost_nothing);
+    tcase_add_test(c, ten_folds_and_seed_1_are_the_defaults);
     tcase_add_loop_test(c, folds_are_2_to_65535, 0, sizeof fold_numbers / sizeof fold_numbers[0]);
     tcase_add_test(c, a_hundred_million_records_are_the_most);
     tcase_add_test(c, counts_of_other_records_are_refused);

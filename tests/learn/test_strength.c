@@ -18,11 +18,17 @@ static bal_strength settled(const bal_prior *prior, const bal_cells *counts) {
 
 /* The score that a choice is by, at one strength, by the functions that score a fit. */
 static double score_at(const bal_prior *prior, const bal_cells *counts, bal_cells *alpha, double strength) {
-    bal_scores scores;
+    bool leave_one_out = bal_prior_choice(prior) == BAL_STRENGTH_BY_LEAVE_ONE_OUT;
+    double sum = 0;
     bal_error err = {0};
     bal_prior_fill(prior, strength, alpha);
-    if (bal_score(alpha, counts, &scores, &err) != BAL_OK) ck_abort_msg("%s", err.message); /* an assertion each time would be slow */
-    return bal_prior_choice(prior) == BAL_STRENGTH_BY_LEAVE_ONE_OUT ? scores.leave_one_out : scores.log_marginal_likelihood;
+    for (size_t v = 0; v < bal_network_variables(bal_cells_network(counts)); v++) {
+        double score;
+        bal_status status = leave_one_out ? bal_leave_one_out(alpha, counts, v, &score, &err) : bal_log_marginal_likelihood(alpha, counts, v, &score, &err);
+        if (status != BAL_OK) ck_abort_msg("%s", err.message); /* an assertion each time would be slow */
+        sum += score;
+    }
+    return sum;
 }
 
 /* Brute force: the best of n points, evenly spaced in the logarithm from 0.01 to 10000. */

@@ -172,6 +172,27 @@ START_TEST(failing_allocations_do_not_let_a_record_pass) {
 }
 END_TEST
 
+/* The first cell of all may be the zero, and small pseudo-counts are none. */
+START_TEST(every_cell_is_looked_at) {
+    bal_network *network = network_of("A:#2");
+    bal_cells *expert = cells_of(network, (const double[]){0, 1});
+    bal_prior *prior = expert_prior(expert, 0.5, 0, 1);
+    for (int code = 0; code < 2; code++) {
+        const int codes[] = {1, code};
+        bal_cells *counts = counts_of(network, codes, 2);
+        bal_source *source = plain_source(network, codes, 2);
+        bal_error err = {0};
+        ck_assert_int_eq(bal_prior_check(prior, counts, source, &err), code == 0 ? BAL_ERR_DATA : BAL_OK);
+        ck_assert_uint_eq(err.record, code == 0 ? 2 : 0);
+        bal_source_free(source);
+        bal_cells_free(counts);
+    }
+    bal_prior_free(prior);
+    bal_cells_free(expert);
+    bal_network_free(network);
+}
+END_TEST
+
 START_TEST(a_refusal_says_the_whole_configuration) {
     bal_network *network = network_of("A:x,y ; B:#3 ; C:p,q | B,A");
     bal_error err = {0};
@@ -194,6 +215,7 @@ static Suite *suite(void) {
     tcase_add_test(c, a_pipe_that_was_read_still_refuses);
     tcase_add_test(c, a_floor_leaves_no_structural_zero);
     tcase_add_test(c, failing_allocations_do_not_let_a_record_pass);
+    tcase_add_test(c, every_cell_is_looked_at);
     tcase_add_test(c, a_refusal_says_the_whole_configuration);
     suite_add_tcase(s, c);
     return s;
