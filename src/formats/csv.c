@@ -35,11 +35,13 @@ static uint64_t word_at(const char *p) {
            (uint64_t)b[5] << 40 | (uint64_t)b[6] << 48 | (uint64_t)b[7] << 56;
 }
 
-/* How many of the eight bytes at p come before the first that may not be plain. The highest bit of a byte of hits is set where
- * the byte is at least 0x80, or below 0x20, or equal to one of three; a borrow makes it wrong only above a right one. */
+/* How many of the eight bytes at p come before the first that may not be plain. The highest bit of a byte of hits is set
+ * where the byte is at least 0x80, or below 0x20, or equal to one of three; a borrow makes it wrong only above a right
+ * one. */
 static size_t plain_bytes(const bali_csv *csv, const char *p) {
     const uint64_t ones = 0x0101010101010101u, highs = ones << 7;
-    uint64_t word = word_at(p), quote = word ^ ones * '"', delete = word ^ ones * 0x7F, delimiter = word ^ csv->delimiters;
+    uint64_t word = word_at(p), quote = word ^ ones * '"', delete = word ^ ones * 0x7F;
+    uint64_t delimiter = word ^ csv->delimiters;
     uint64_t below = (word - ones * 0x20) | (quote - ones) | (delete - ones) | (delimiter - ones);
     uint64_t hits = (below | word) & highs;
     return hits ? (size_t)__builtin_ctzll(hits) / 8 : 8;
@@ -50,7 +52,8 @@ static bal_status bad_control(const bali_csv *csv, const char *at, uint32_t char
         (void)bal_error_set(err, BAL_ERR_SYNTAX, "control-character",
                             "a NUL byte (0x00); a table is text: remove it, or save the table as CSV in UTF-8");
     else
-        (void)bal_error_set(err, BAL_ERR_SYNTAX, "control-character", "control character U+%04X; remove it", (unsigned)character);
+        (void)bal_error_set(err, BAL_ERR_SYNTAX, "control-character", "control character U+%04X; remove it",
+                            (unsigned)character);
     return bali_csv_error_at(&csv->buffer, at, err);
 }
 
@@ -113,7 +116,8 @@ static bal_status quote_inside(const bali_csv *csv, const char *at, bal_error *e
     const char *begin = csv->buffer.cell;
     if (at - begin == 3 && memcmp(begin, "\xEF\xBB\xBF", 3) == 0)
         (void)bal_error_set(err, BAL_ERR_SYNTAX, "misplaced-quote",
-                            "a byte order mark stands before this quote, as where files were joined; remove it, and a second header");
+                            "a byte order mark stands before this quote, as where files were joined; remove it, and a "
+                            "second header");
     else if (begin + strspn(begin, " \t") == at)
         (void)bal_error_set(err, BAL_ERR_SYNTAX, "misplaced-quote",
                             "a quote behind blanks; remove the blanks, or quote the whole cell and double the quotes in it");
@@ -189,8 +193,10 @@ static bal_status text_after_quote(const bali_csv *csv, const char *at, bal_erro
     size_t line, column;
     bali_csv_place(csv, &line, &column);
     (void)bal_error_set(err, BAL_ERR_SYNTAX, "misplaced-quote",
-                        "%s behind the quote that closes the cell begun at %zu:%zu; %sdouble the quote if it belongs to the text",
-                        is_blank(*at) ? "a blank" : "more text", line, column, is_blank(*at) ? "remove the blank, or " : "");
+                        "%s behind the quote that closes the cell begun at %zu:%zu; %sdouble the quote if it belongs to "
+                        "the text",
+                        is_blank(*at) ? "a blank" : "more text", line, column,
+                        is_blank(*at) ? "remove the blank, or " : "");
     return bali_csv_error_at(&csv->buffer, at, err);
 }
 
@@ -249,8 +255,8 @@ static bal_status look_at_start(bali_csv *csv, bal_error *err) {
     bool complete = false;
     bal_status status = bali_csv_buffer_need(buffer, &buffer->at, LONGEST_SIGNATURE, err);
     for (;;) {
-        size_t length = (size_t)(buffer->end - buffer->at);
-        csv->first_line = bali_csv_line_length(buffer->at, length < LONGEST_FIRST_LINE ? length : LONGEST_FIRST_LINE, &complete);
+        size_t length = (size_t)(buffer->end - buffer->at), most = LONGEST_FIRST_LINE;
+        csv->first_line = bali_csv_line_length(buffer->at, length < most ? length : most, &complete);
         if (status != BAL_OK || complete || buffer->exhausted || length >= LONGEST_FIRST_LINE) return status;
         status = bali_csv_buffer_need(buffer, &buffer->at, length + 1, err);
     }
@@ -284,13 +290,15 @@ static bool may_delimit(char c) {
 
 static bal_status create(bali_csv *csv, const char *path, const bali_csv_options *options, bal_error *err) {
     bali_csv_buffer *buffer = &csv->buffer;
+    size_t chunk_bytes = options->chunk_bytes ? options->chunk_bytes : BALI_CSV_CHUNK_BYTES;
     csv->redact = options->redact;
-    bal_status status = bali_csv_buffer_open(buffer, path, options->chunk_bytes ? options->chunk_bytes : BALI_CSV_CHUNK_BYTES, err);
+    bal_status status = bali_csv_buffer_open(buffer, path, chunk_bytes, err);
     if (status == BAL_OK) status = start(csv, err);
     if (status != BAL_OK) return status;
     status = bali_csv_look(buffer->at, (size_t)(buffer->end - buffer->at), err);
     if (status != BAL_OK) bal_error_place(err, bali_input_name(buffer->input), 1, 1);
-    csv->delimiter = options->delimiter ? options->delimiter : bali_csv_guess_delimiter(path, buffer->at, csv->first_line);
+    csv->delimiter = options->delimiter;
+    if (!csv->delimiter) csv->delimiter = bali_csv_guess_delimiter(path, buffer->at, csv->first_line);
     set_kinds(csv);
     return status;
 }

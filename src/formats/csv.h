@@ -36,7 +36,8 @@ typedef struct bali_csv_cell {
  * Fails:  IO; MEMORY; ARGUMENT "bad-delimiter"; SYNTAX when the first bytes are those of something else than CSV in
  *         UTF-8 (see csv_look.h).
  */
-BAL_MUST_CHECK bal_status bali_csv_open(const char *path, const bali_csv_options *options, bali_csv **out, bal_error *err);
+BAL_MUST_CHECK bal_status bali_csv_open(const char *path, const bali_csv_options *options, bali_csv **out,
+                                        bal_error *err);
 
 /**
  * The next cell. A record ends at LF, CRLF, CR or the end of the file; an empty line is a record of one empty cell.

@@ -28,7 +28,8 @@ bal_status bali_csv_cell_too_long(const bali_csv_buffer *buffer, bool quoted, ba
                             "the quote that opens here is not closed within 1 MiB, the most a cell may hold; close it, "
                             "or double a quote that belongs to the text");
     else
-        (void)bal_error_set(err, BAL_ERR_SYNTAX, "cell-too-long", "the cell that begins here is longer than 1 MiB; shorten it");
+        (void)bal_error_set(err, BAL_ERR_SYNTAX, "cell-too-long",
+                            "the cell that begins here is longer than 1 MiB; shorten it");
     return bali_csv_error_at_cell(buffer, err);
 }
 
@@ -141,6 +142,7 @@ bal_status bali_csv_buffer_fill(bali_csv_buffer *buffer, const char **p, bool *m
 bal_status bali_csv_buffer_need(bali_csv_buffer *buffer, const char **p, size_t n, bal_error *err) {
     bal_status status = BAL_OK;
     bool more = true;
-    while (status == BAL_OK && more && (size_t)(buffer->end - *p) < n) status = bali_csv_buffer_fill(buffer, p, &more, err);
+    while (status == BAL_OK && more && (size_t)(buffer->end - *p) < n)
+        status = bali_csv_buffer_fill(buffer, p, &more, err);
     return status;
 }

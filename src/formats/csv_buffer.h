@@ -1,8 +1,8 @@
 /* The bytes of a CSV file as a window that moves over it and always holds the unfinished cell whole.
  *
- * The memory is [ ... room | chunk ]: every read fills the chunk, so that reads stay aligned in the file, and what is there of
- * the unfinished cell is moved to stand just before it. Invariants: cell <= at <= end; *end is a NUL that belongs to nobody, so
- * that scanning needs no check of bounds; the bytes from cell to end are those of the file, never edited. */
+ * The memory is [ ... room | chunk ]: every read fills the chunk, so that reads stay aligned in the file, and what is
+ * there of the unfinished cell is moved to stand just before it. Invariants: cell <= at <= end; *end is a NUL that belongs
+ * to nobody, so that scanning needs no check of bounds; the bytes from cell to end are those of the file, never edited. */
 #ifndef FORMATS_CSV_BUFFER_H
 #define FORMATS_CSV_BUFFER_H
 
@@ -30,13 +30,14 @@ typedef struct bali_csv_buffer {
 } bali_csv_buffer;
 
 /** Opens a file; the buffer, which begins as {0}, is empty and stands at its start. Fails: IO, MEMORY. */
-BAL_MUST_CHECK bal_status bali_csv_buffer_open(bali_csv_buffer *buffer, const char *path, size_t chunk_bytes, bal_error *err);
+BAL_MUST_CHECK bal_status bali_csv_buffer_open(bali_csv_buffer *buffer, const char *path, size_t chunk_bytes,
+                                               bal_error *err);
 BAL_MUST_CHECK bal_status bali_csv_buffer_rewind(bali_csv_buffer *buffer, bal_error *err);
 void bali_csv_buffer_close(bali_csv_buffer *buffer);
 
 /**
- * Reads the next chunk behind the bytes from the cell on. *p, which stands among those, moves with them; *more says whether
- * anything came.
+ * Reads the next chunk behind the bytes from the cell on. *p, which stands among those, moves with them; *more says
+ * whether anything came.
  *
  * Fails:  SYNTAX when the cell is longer than BALI_CSV_CELL_LIMIT; IO; DATA "changed-while-read"; MEMORY.
  */

@@ -19,7 +19,8 @@ static const signature signatures[] = {
     SIGNATURE("BZh91AY&SY", "not-a-table", "bzip2 data; decompress it first (bunzip2)"),
     SIGNATURE("\xFD" "7zXZ", "not-a-table", "xz data; decompress it first (unxz)"),
     SIGNATURE("\x28\xB5\x2F\xFD", "not-a-table", "zstd data; decompress it first (unzstd)"),
-    SIGNATURE("PK\x03\x04", "not-a-table", "a zip archive or a spreadsheet (.xlsx, .ods); open it there and save it as CSV in UTF-8"),
+    SIGNATURE("PK\x03\x04", "not-a-table",
+              "a zip archive or a spreadsheet (.xlsx, .ods); open it there and save it as CSV in UTF-8"),
     SIGNATURE("\xD0\xCF\x11\xE0", "not-a-table", "an old spreadsheet (.xls); open it there and save it as CSV in UTF-8"),
     SIGNATURE("%PDF-", "not-a-table", "a PDF; ask for the table behind it, saved as CSV in UTF-8"),
     SIGNATURE("{\\rtf", "not-a-table", "a word processor's text (RTF); save the table as CSV in UTF-8"),
@@ -85,8 +86,9 @@ bal_status bali_csv_look(const char *bytes, size_t length, bal_error *err) {
     bool complete;
     size_t line = bali_csv_line_length(bytes, length, &complete);
     if (line == 5 && begins_with(bytes, line, "sep="))
-        return bal_error_set(err, status, "sep-line", "a spreadsheet's note \"%.*s\" stands before the header; remove the line%s",
-                             (int)line, bytes, bytes[4] == ',' ? "" : " and give the delimiter with --delimiter");
+        return bal_error_set(err, status, "sep-line",
+                             "a spreadsheet's note \"%.*s\" stands before the header; remove the line%s", (int)line,
+                             bytes, bytes[4] == ',' ? "" : " and give the delimiter with --delimiter");
     return BAL_OK;
 }
 
@@ -101,7 +103,8 @@ char bali_csv_guess_delimiter(const char *path, const char *line, size_t length)
     return ',';
 }
 
-bool bali_csv_split(const char *line, size_t length, char delimiter, size_t *at, const char **piece, size_t *piece_length) {
+bool bali_csv_split(const char *line, size_t length, char delimiter, size_t *at, const char **piece,
+                    size_t *piece_length) {
     if (*at > length) return false;
     bool quoted = false;
     size_t begin = *at, end = *at;

@@ -6,8 +6,8 @@
 
 #include <stdbool.h>
 
-/** Length of the first line of some bytes, its end not counted; a newline inside quotes does not end it. *complete is false
- *  when no end was met. */
+/** Length of the first line of some bytes, its end not counted; a newline inside quotes does not end it. *complete is
+ *  false when no end was met. */
 size_t bali_csv_line_length(const char *bytes, size_t length, bool *complete);
 
 /**
@@ -22,8 +22,9 @@ BAL_MUST_CHECK bal_status bali_csv_look(const char *bytes, size_t length, bal_er
 /** Tab when the file's name ends in .tsv or its first line has a tab outside quotes, else comma. */
 char bali_csv_guess_delimiter(const char *path, const char *line, size_t length);
 
-/** One piece of the first line split at a delimiter outside quotes, without outer blanks and outer quotes. *at starts at 0.
- *  Returns false when there is none left. Doubled quotes stay doubled. */
-bool bali_csv_split(const char *line, size_t length, char delimiter, size_t *at, const char **piece, size_t *piece_length);
+/** One piece of the first line split at a delimiter outside quotes, without outer blanks and outer quotes. *at starts at
+ *  0. Returns false when there is none left. Doubled quotes stay doubled. */
+bool bali_csv_split(const char *line, size_t length, char delimiter, size_t *at, const char **piece,
+                    size_t *piece_length);
 
 #endif

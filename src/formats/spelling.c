@@ -49,8 +49,8 @@ static uint32_t peek(reader text) {
 }
 
 /* The letter under the accent of a composed Latin letter, ' ' for letters that are not composed, 0 beyond this table.
- * Source: the canonical decompositions of U+00C0 to U+017F in the Unicode Character Database, which the module unicodedata of
- * Python 3.11 gives alike. */
+ * Source: the canonical decompositions of U+00C0 to U+017F in the Unicode Character Database, which the module
+ * unicodedata of Python 3.11 gives alike. */
 static uint32_t base_letter(uint32_t c) {
     static const char bases[] = "AAAAAA CEEEEIIII NOOOOO  UUUUY  aaaaaa ceeeeiiii nooooo  uuuuy y" /* U+00C0 */
                                 "AaAaAaCcCcCcCcDd  EeEeEeEeEeGgGg"                                 /* U+0100 */
@@ -101,7 +101,8 @@ const char *bali_difference_words(bali_difference difference) {
     return NULL;
 }
 
-size_t bali_spelling_nearest(const char *text, size_t length, const char *const *names, size_t n_names, bali_difference *how) {
+size_t bali_spelling_nearest(const char *text, size_t length, const char *const *names, size_t n_names,
+                             bali_difference *how) {
     *how = BALI_DIFFERENT;
     if (length == 0 || length > LONGEST_COMPARED) return BALI_NO_NAME;
     for (size_t i = 0; i < n_names && i < MOST_COMPARED; i++) {

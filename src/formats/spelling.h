@@ -13,17 +13,18 @@ typedef enum bali_difference {
                                  U+0065 U+0301 (Unicode Standard Annex 15, forms NFC and NFD) */
 } bali_difference;
 
-/** How two different texts of UTF-8 differ. That accents are the same is checked for Latin letters (U+00C0 to U+017F) as far
- *  as their base letter, and assumed for others. */
+/** How two different texts of UTF-8 differ. That accents are the same is checked for Latin letters (U+00C0 to U+017F) as
+ *  far as their base letter, and assumed for others. */
 bali_difference bali_spelling_difference(const char *a, size_t length_a, const char *b, size_t length_b);
 
 /** "only in case" and so on, for the end of "differs ..."; NULL for BALI_DIFFERENT. Static. */
 const char *bali_difference_words(bali_difference difference);
 
 /**
- * The valid name nearest to a text: one that differs only as above, else by bali_nearest, else BALI_NO_NAME. Only the first
- * 10,000 names are looked at. *how is not NULL.
+ * The valid name nearest to a text: one that differs only as above, else by bali_nearest, else BALI_NO_NAME. Only the
+ * first 10,000 names are looked at. *how is not NULL.
  */
-size_t bali_spelling_nearest(const char *text, size_t length, const char *const *names, size_t n_names, bali_difference *how);
+size_t bali_spelling_nearest(const char *text, size_t length, const char *const *names, size_t n_names,
+                             bali_difference *how);
 
 #endif

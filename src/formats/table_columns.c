@@ -18,7 +18,8 @@ static bool copy_spellings(bali_table_columns *columns, const bal_table_options 
     return bali_label_codes_build(&columns->missing, (const char *const *)columns->spellings, columns->n_spellings);
 }
 
-static bool create_column(bali_table_columns *columns, const bal_domain *domain, size_t variable, bali_table_column *column) {
+static bool create_column(bali_table_columns *columns, const bal_domain *domain, size_t variable,
+                          bali_table_column *column) {
     column->variable = variable;
     column->name = bal_domain_name(domain, variable);
     column->name_length = strlen(column->name);
@@ -30,8 +31,8 @@ static bool create_column(bali_table_columns *columns, const bal_domain *domain,
     }
     column->codes = bali_allocate(columns->capacity, columns->width);
     columns->by_variable[variable] = column->codes;
-    return column->codes &&
-           bali_label_codes_build(&column->labels, bali_domain_labels(domain, variable), bal_domain_outcomes(domain, variable));
+    size_t n_outcomes = bal_domain_outcomes(domain, variable);
+    return column->codes && bali_label_codes_build(&column->labels, bali_domain_labels(domain, variable), n_outcomes);
 }
 
 static bool is_wanted(const bal_table_options *options, size_t variable) {
@@ -44,11 +45,13 @@ bool bali_table_columns_create(bali_table_columns *columns, const bal_domain *do
     for (size_t c = 0; c < header->n_columns; c++) n_wanted += is_wanted(options, header->variables[c]);
     columns->width = bali_code_width(domain);
     columns->capacity = BALI_BLOCK_RECORDS;
-    while (columns->capacity > FEWEST_RECORDS && n_wanted * columns->width > MOST_BLOCK_BYTES / columns->capacity) columns->capacity /= 2;
+    while (columns->capacity > FEWEST_RECORDS && n_wanted * columns->width > MOST_BLOCK_BYTES / columns->capacity)
+        columns->capacity /= 2;
     columns->columns = bali_allocate(n_wanted, sizeof *columns->columns);
     columns->by_place = bali_allocate(header->n_columns, sizeof *columns->by_place);
     columns->by_variable = bali_allocate(bal_domain_variables(domain), sizeof *columns->by_variable);
-    if (!columns->columns || !columns->by_place || !columns->by_variable || !copy_spellings(columns, options)) return false;
+    if (!columns->columns || !columns->by_place || !columns->by_variable) return false;
+    if (!copy_spellings(columns, options)) return false;
     for (size_t c = 0; c < header->n_columns; c++) {
         if (!is_wanted(options, header->variables[c])) continue;
         columns->by_place[c] = &columns->columns[columns->n_columns++];

@@ -45,8 +45,8 @@ static bool names_variable(const reading *r, const char *line, size_t length, ch
     return pieces > 1 && *variable != BAL_NONE;
 }
 
-/* A header that holds no delimiter but names a variable when split at another one was read with the wrong one. Looked at before
- * any cell is read, since quotes make no sense either then. */
+/* A header that holds no delimiter but names a variable when split at another one was read with the wrong one. Looked at
+ * before any cell is read, since quotes make no sense either then. */
 static bal_status check_delimiter(const reading *r, bal_error *err) {
     static const char usual[] = ";,\t|";
     size_t length, variable, at = 0, piece_length;
@@ -57,7 +57,8 @@ static bal_status check_delimiter(const reading *r, bal_error *err) {
     for (const char *other = usual; *other; other++) {
         if (*other == delimiter || !names_variable(r, line, length, *other, &variable)) continue;
         bali_phrase phrase = {0};
-        bali_phrase_add(&phrase, "the header has no %s, but names ", delimiter == '\t' ? "tab" : (char[]){'"', delimiter, '"', '\0'});
+        if (delimiter == '\t') bali_phrase_add(&phrase, "the header has no tab, but names ");
+        else bali_phrase_add(&phrase, "the header has no \"%c\", but names ", delimiter);
         bali_phrase_text(&phrase, bal_domain_name(r->domain, variable), strlen(bal_domain_name(r->domain, variable)));
         if (*other == '\t') bali_phrase_add(&phrase, " when split at tabs; leave out --delimiter");
         else bali_phrase_add(&phrase, " when split at \"%c\"; give --delimiter '%c'", *other, *other);
@@ -77,7 +78,8 @@ static bal_status no_header(const reading *r, const char *what, bal_error *err) 
 static bal_status empty_column(const reading *r, const bali_csv_cell *cell, bal_error *err) {
     size_t number = r->header->n_columns + 1;
     if (number == 1 && cell->ends_record) return no_header(r, "the first line is blank", err);
-    (void)bal_error_set(err, BAL_ERR_DATA, "empty-column", "column %zu of the header has no name; name it, or remove it%s", number,
+    (void)bal_error_set(err, BAL_ERR_DATA, "empty-column",
+                        "column %zu of the header has no name; name it, or remove it%s", number,
                         cell->ends_record ? " (a delimiter at the end of every line makes an empty column)" : "");
     return refuse_column(r, BAL_NONE, err);
 }
@@ -85,16 +87,18 @@ static bal_status empty_column(const reading *r, const bali_csv_cell *cell, bal_
 static bal_status duplicate_column(const reading *r, size_t first, const char *name, size_t variable, bal_error *err) {
     bali_phrase phrase = {0};
     bali_phrase_quote(&phrase, name, strlen(name));
-    (void)bal_error_set(err, BAL_ERR_DATA, "duplicate-column", "columns %zu and %zu are both named %s; rename or remove one", first + 1,
-                        r->header->n_columns, phrase.text);
+    (void)bal_error_set(err, BAL_ERR_DATA, "duplicate-column",
+                        "columns %zu and %zu are both named %s; rename or remove one", first + 1, r->header->n_columns,
+                        phrase.text);
     return refuse_column(r, variable, err);
 }
 
 static bal_status unexpected_column(const reading *r, const char *name, bal_error *err) {
     bali_phrase phrase = {0};
     bali_phrase_quote(&phrase, name, strlen(name));
-    (void)bal_error_set(err, BAL_ERR_DATA, "unexpected-column", "column %zu, %s, is not a variable; remove it, or leave out --strict",
-                        r->header->n_columns, phrase.text);
+    (void)bal_error_set(err, BAL_ERR_DATA, "unexpected-column",
+                        "column %zu, %s, is not a variable; remove it, or leave out --strict", r->header->n_columns,
+                        phrase.text);
     return refuse_column(r, BAL_NONE, err);
 }
 
@@ -107,16 +111,17 @@ static bal_status too_many_columns(const reading *r, bal_error *err) {
 
 /* Adds a name; variables has the same capacity as names. */
 static bool add_name(bali_table_header *header, const bali_csv_cell *cell, size_t variable) {
-    size_t names = header->capacity, variables = header->capacity;
-    if (!bali_grow((void **)&header->names, &names, header->n_columns + 1, sizeof *header->names)) return false;
-    if (!bali_grow((void **)&header->variables, &variables, header->n_columns + 1, sizeof *header->variables)) return false;
+    size_t names = header->capacity, variables = header->capacity, n = header->n_columns + 1;
+    if (!bali_grow((void **)&header->names, &names, n, sizeof *header->names)) return false;
+    if (!bali_grow((void **)&header->variables, &variables, n, sizeof *header->variables)) return false;
     header->capacity = variables;
     char *copy = bali_duplicate(cell->text, cell->length);
     if (!copy) return false;
     header->variables[header->n_columns] = variable;
     header->names[header->n_columns++] = copy;
     if (variable != BAL_NONE) return true;
-    if (!bali_grow((void **)&header->ignored, &header->ignored_capacity, header->n_ignored + 1, sizeof *header->ignored)) return false;
+    n = header->n_ignored + 1;
+    if (!bali_grow((void **)&header->ignored, &header->ignored_capacity, n, sizeof *header->ignored)) return false;
     header->ignored[header->n_ignored++] = copy;
     return true;
 }
@@ -174,7 +179,8 @@ static bal_status find_absent(const reading *r, absent *found, bool **is_missing
         bool worth = found->nearest == BAL_NONE && found->missing <= MOST_LISTED;
         const char *name = bal_domain_name(r->domain, v);
         bali_difference how = BALI_DIFFERENT;
-        size_t near = worth ? bali_spelling_nearest(name, strlen(name), header->ignored, header->n_ignored, &how) : BALI_NO_NAME;
+        size_t near = BALI_NO_NAME;
+        if (worth) near = bali_spelling_nearest(name, strlen(name), header->ignored, header->n_ignored, &how);
         if (found->first == BAL_NONE || near != BALI_NO_NAME) found->first = v;
         if (near == BALI_NO_NAME) continue;
         found->nearest = near;
@@ -255,9 +261,8 @@ static void tell_ignored(const reading *r) {
     }
     if (header->n_ignored > listed) bali_phrase_add(&phrase, " and %zu more", header->n_ignored - listed);
     bal_error notice = {0};
-    (void)bal_error_set(&notice, BAL_ERR_DATA, "ignored-columns", "%zu column%s %s not %s and %s ignored: %s", header->n_ignored,
-                        header->n_ignored == 1 ? "" : "s", header->n_ignored == 1 ? "is" : "are",
-                        header->n_ignored == 1 ? "a variable" : "variables", header->n_ignored == 1 ? "is" : "are", phrase.text);
+    const char *words = header->n_ignored == 1 ? "column is not a variable and is" : "columns are not variables and are";
+    (void)bal_error_set(&notice, BAL_ERR_DATA, "ignored-columns", "%zu %s ignored: %s", header->n_ignored, words, phrase.text);
     bal_error_place(&notice, bali_csv_name(r->csv), header->line, 0);
     notice.status = BAL_OK;
     notices->tell(notices->context, BAL_WARNING, &notice);

@@ -18,10 +18,10 @@ typedef struct bali_table_header {
 } bali_table_header;
 
 /**
- * Reads the first record and binds its columns to the variables of that exact name. Tells a warning of the columns that no
- * variable has.
+ * Reads the first record and binds its columns to the variables of that exact name. Tells a warning of the columns that
+ * no variable has.
  *
- * Fails:  as bali_csv_next; SYNTAX "no-header", "comment-line"; DATA "empty-column", "duplicate-column", "missing-column",
+ * Fails:  as bali_csv_next; SYNTAX "no-header"; DATA "comment-line", "empty-column", "duplicate-column", "missing-column",
  *         "unexpected-column", "wrong-delimiter", "too-many-columns"; MEMORY.
  */
 BAL_MUST_CHECK bal_status bali_table_header_read(bali_table_header *header, bali_csv *csv, const bal_domain *domain,

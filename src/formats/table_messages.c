@@ -22,9 +22,10 @@ static bool equal_lower(const char *text, size_t length, const char *word) {
 
 /* How a missing cell is often written, in lower case. Only empty cells and NA are taken as missing unasked. */
 static bool is_usual_missing(const char *text, size_t length) {
-    static const char *const usual[] = {"n/a",  "na",  "nan",  "null",    "none", "nil", "missing", "n.a.", "#n/a", "?", "??",
-                                        ".",    "..",  "-",    "--",      "---",  "*",   "-1",      "-9",   "-99",  "-999",
-                                        "-9999", "999", "9999", "#value!", "(null)", "<na>", "not known", "unk"};
+    static const char *const usual[] = {
+        "n/a", "na", "nan", "null", "none", "nil", "missing", "n.a.", "#n/a", "<na>", "(null)", "#value!", "not known",
+        "unk", "?",  "??",  ".",    "..",   "-",   "--",      "---",  "*",    "-1",   "-9",     "-99",     "-999",
+        "-9999", "999", "9999"};
     for (size_t i = 0; i < sizeof usual / sizeof usual[0]; i++)
         if (equal_lower(text, length, usual[i])) return true;
     return false;
@@ -107,7 +108,8 @@ static void say_hint(const bali_bad_label *label, bali_phrase *phrase) {
     }
     if (date != BALI_NO_NAME) outcome = date;
     if (outcome != BALI_NO_NAME) {
-        bali_phrase_add(phrase, words ? "; " : date != BALI_NO_NAME ? "; did a spreadsheet make a date of " : "; did you mean ");
+        const char *question = date != BALI_NO_NAME ? "; did a spreadsheet make a date of " : "; did you mean ";
+        bali_phrase_add(phrase, "%s", words ? "; " : question);
         bali_phrase_quote(phrase, labels[outcome], strlen(labels[outcome]));
         if (words) bali_phrase_add(phrase, " differs %s", words);
         else bali_phrase_add(phrase, "?");
@@ -142,7 +144,8 @@ static size_t next_largest(const bal_domain *domain, const uint64_t *counts, siz
 void bali_say_largest(const bal_domain *domain, const uint64_t *counts, bali_phrase *phrase) {
     size_t listed = 0, in_all = 0;
     for (size_t v = 0; v < bal_domain_variables(domain); v++) in_all += counts[v] > 0;
-    for (size_t v = BAL_NONE; listed < MOST_COUNTS && listed < in_all && phrase->length < sizeof phrase->text / 2; listed++) {
+    size_t most = in_all < MOST_COUNTS ? in_all : MOST_COUNTS;
+    for (size_t v = BAL_NONE; listed < most && phrase->length < sizeof phrase->text / 2; listed++) {
         v = next_largest(domain, counts, v);
         if (listed > 0) bali_phrase_add(phrase, ", ");
         bali_phrase_count(phrase, counts[v]);

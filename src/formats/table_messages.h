@@ -16,8 +16,8 @@ typedef struct bali_bad_label {
     bool redact;     /* say nothing of the text */
 } bali_bad_label;
 
-/** The whole message: the text, the outcomes there are, and a hint where one suggests itself: another case, invisible blanks,
- *  Unicode normalisation, 1.0 for 1, a date that a spreadsheet made, a usual spelling of a missing cell. */
+/** The whole message: the text, the outcomes there are, and a hint where one suggests itself: another case, invisible
+ *  blanks, Unicode normalisation, 1.0 for 1, a date that a spreadsheet made, a usual spelling of a missing cell. */
 void bali_say_bad_label(const bali_bad_label *label, bali_phrase *phrase);
 
 /** "12 in smoker, 3 in age": the variables with the largest counts first, at most ten. */

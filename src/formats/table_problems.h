@@ -7,7 +7,12 @@
 #include <stdbool.h>
 #include <stdint.h>
 
-typedef enum bali_problem_kind { BALI_BAD_LABEL, BALI_REPEATED_HEADER, BALI_MISSING_CELL, BALI_PROBLEM_KINDS } bali_problem_kind;
+typedef enum bali_problem_kind {
+    BALI_BAD_LABEL,
+    BALI_REPEATED_HEADER,
+    BALI_MISSING_CELL,
+    BALI_PROBLEM_KINDS
+} bali_problem_kind;
 
 #define BALI_MOST_TOLD 10
 

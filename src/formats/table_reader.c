@@ -25,7 +25,8 @@ static void tell(const bali_table_reader *t, bal_severity severity, bal_error *n
     if (t->notices.tell) t->notices.tell(t->notices.context, severity, notice);
 }
 
-static void report_label(bali_table_reader *t, const bali_table_column *c, const char *text, size_t length, const bali_table_suspect *at) {
+static void report_label(bali_table_reader *t, const bali_table_column *c, const char *text, size_t length,
+                         const bali_table_suspect *at) {
     if (!bali_problems_count(&t->problems, BALI_BAD_LABEL, c->variable)) return;
     /* With every record on a line of its own the line tells the record. */
     bool obvious = at->line == t->header.line + 1 + t->place;
@@ -47,7 +48,8 @@ static void report_missing(bali_table_reader *t, const bali_table_column *c) {
     bal_error problem = {0};
     bali_phrase phrase = {0};
     bali_phrase_text(&phrase, c->name, c->name_length);
-    (void)bal_error_set(&problem, BAL_ERR_DATA, "missing-cells", "%s is missing here; fill it in, or see --missing", phrase.text);
+    (void)bal_error_set(&problem, BAL_ERR_DATA, "missing-cells", "%s is missing here; fill it in, or see --missing",
+                        phrase.text);
     cell_place(t, &line, &column);
     place_error(t, &problem, line, column, c->name);
     bali_problems_tell(&t->problems, &problem);
@@ -56,8 +58,8 @@ static void report_missing(bali_table_reader *t, const bali_table_column *c) {
 static void report_header(bali_table_reader *t) {
     if (!bali_problems_count(&t->problems, BALI_REPEATED_HEADER, BAL_NONE)) return;
     bal_error problem = {0};
-    (void)bal_error_set(&problem, BAL_ERR_DATA, "repeated-header", "line %zu repeats the header, as where files were joined; remove it",
-                        t->record_line);
+    (void)bal_error_set(&problem, BAL_ERR_DATA, "repeated-header",
+                        "line %zu repeats the header, as where files were joined; remove it", t->record_line);
     place_error(t, &problem, t->record_line, 1, NULL);
     bali_problems_tell(&t->problems, &problem);
 }
@@ -88,7 +90,10 @@ static void take_unknown(bali_table_reader *t, const bali_table_column *c, const
         report_label(t, c, cell->text, cell->length, &at);
         return;
     }
-    if (t->n_suspects < BALI_MOST_TOLD) cell_place(t, &t->suspects[t->n_suspects].line, &t->suspects[t->n_suspects].column);
+    if (t->n_suspects < BALI_MOST_TOLD) {
+        cell_place(t, &at.line, &at.column);
+        t->suspects[t->n_suspects] = at;
+    }
     t->n_suspects++;
 }
 
@@ -102,7 +107,8 @@ static void note_contested(bali_table_reader *t, bali_table_column *c, const bal
     bali_phrase_quote(&phrase, cell->text, cell->length);
     bali_phrase_add(&phrase, " is an outcome of ");
     bali_phrase_text(&phrase, c->name, c->name_length);
-    (void)bal_error_set(&note, BAL_ERR_DATA, "outcome-not-missing", "%s, so it is not taken as a missing cell there", phrase.text);
+    bali_phrase_add(&phrase, ", so it is not taken as a missing cell there");
+    (void)bal_error_set(&note, BAL_ERR_DATA, "outcome-not-missing", "%s", phrase.text);
     cell_place(t, &line, &column);
     place_error(t, &note, line, column, c->name);
     tell(t, BAL_NOTE, &note);
@@ -120,7 +126,7 @@ static void take_cell(bali_table_reader *t, bali_table_column *c, const bali_csv
 
 /* Adds the column's name to what the reader of cells says. */
 static bal_status broken_cell(bali_table_reader *t, size_t column) {
-    if (column >= t->header.n_columns || t->failure.status == BAL_ERR_MEMORY || t->failure.line == 0) return t->failure.status;
+    if (column >= t->header.n_columns || t->failure.line == 0) return t->failure.status;
     const char *name = t->header.names[column];
     bali_phrase phrase = {0};
     bali_phrase_add(&phrase, "%s (in column ", t->failure.message);
@@ -155,7 +161,8 @@ static bal_status long_record(bali_table_reader *t, const bali_csv_cell *first_b
     bool at_end = first_beyond->ends_record && first_beyond->length == 0;
     bali_csv_cell cell = *first_beyond;
     bali_csv_place(t->csv, &line, &column);
-    while (!cell.ends_record && n_cells < BALI_MOST_COLUMNS && bali_csv_next(t->csv, &cell, NULL) == BAL_OK && cell.text) n_cells++;
+    for (; !cell.ends_record && n_cells < BALI_MOST_COLUMNS; n_cells++)
+        if (bali_csv_next(t->csv, &cell, NULL) != BAL_OK || !cell.text) break;
     bal_status status = bal_error_set(&t->failure, BAL_ERR_SYNTAX, "ragged-record",
                                       "found %zu cells%s, expected %zu as in the header on line %zu; %s", n_cells,
                                       n_cells < BALI_MOST_COLUMNS ? "" : " or more", t->header.n_columns, t->header.line,
@@ -166,7 +173,8 @@ static bal_status long_record(bali_table_reader *t, const bali_csv_cell *first_b
 }
 
 static bal_status blank_line(bali_table_reader *t) {
-    bal_status status = bal_error_set(&t->failure, BAL_ERR_SYNTAX, "blank-line", "a blank line between records; remove it");
+    bal_status status = bal_error_set(&t->failure, BAL_ERR_SYNTAX, "blank-line",
+                                      "a blank line between records; remove it");
     place_error(t, &t->failure, t->blank_line, 1, NULL);
     return status;
 }
@@ -224,7 +232,8 @@ bal_status bali_table_read_record(bali_table_reader *t, size_t n) {
     t->n_suspects = 0;
     t->is_comment = cell.length > 0 && cell.text[0] == '#' && !cell.quoted;
     const bali_table_column *first = t->columns.by_place[0];
-    if (t->is_comment && first && bali_table_columns_code(&t->columns, first, &cell) == BALI_UNKNOWN) return comment_line(t);
+    if (t->is_comment && first && bali_table_columns_code(&t->columns, first, &cell) == BALI_UNKNOWN)
+        return comment_line(t);
     for (size_t c = 0;; c++) {
         if (c == t->header.n_columns) return long_record(t, &cell);
         if (t->columns.by_place[c]) take_cell(t, t->columns.by_place[c], &cell);
@@ -274,8 +283,8 @@ size_t bali_table_reader_line(const bali_table_reader *t, const char *path, uint
     return line;
 }
 
-bal_status bali_table_reader_open(bali_table_reader *t, const bal_domain *domain, const char *path, const bal_table_options *options,
-                                  bal_error *err) {
+bal_status bali_table_reader_open(bali_table_reader *t, const bal_domain *domain, const char *path,
+                                  const bal_table_options *options, bal_error *err) {
     t->domain = domain;
     t->policy = options->missing;
     t->redact = options->redact;
@@ -285,8 +294,9 @@ bal_status bali_table_reader_open(bali_table_reader *t, const bal_domain *domain
     if (status == BAL_OK) status = bali_table_header_read(&t->header, t->csv, domain, options, err);
     if (status != BAL_OK) return status;
     t->missing = bali_allocate(bal_domain_variables(domain), sizeof *t->missing);
-    if (!t->missing || !bali_table_columns_create(&t->columns, domain, &t->header, options)) return bali_out_of_memory(err);
-    return bali_problems_create(&t->problems, domain, options->notices) ? BAL_OK : bali_out_of_memory(err);
+    bool made = t->missing && bali_table_columns_create(&t->columns, domain, &t->header, options) &&
+                bali_problems_create(&t->problems, domain, options->notices);
+    return made ? BAL_OK : bali_out_of_memory(err);
 }
 
 void bali_table_reader_close(bali_table_reader *t) {

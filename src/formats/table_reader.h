@@ -1,8 +1,8 @@
 /* Records of a table as codes, one after another; what is wrong with their cells is gathered.
  *
- * The second seam of the table reader (csv.h has the first): bali_table_read_record puts one record's codes at one place of every
- * wanted column. A faster scanner may do so for whole clean records straight from the bytes, and must leave to this one every
- * record with a cell that is not plainly one of the labels: then all checks and all messages stay in one place. */
+ * The second seam of the table reader (csv.h has the first): bali_table_read_record puts one record's codes at one place of
+ * every wanted column. A faster scanner may do so for whole clean records straight from the bytes, and must leave to this
+ * one every record with a cell that is not plainly one of the labels: so all checks and all messages stay in one place. */
 #ifndef FORMATS_TABLE_READER_H
 #define FORMATS_TABLE_READER_H
 
@@ -49,8 +49,8 @@ BAL_MUST_CHECK bal_status bali_table_reader_open(bali_table_reader *reader, cons
                                                  const bal_table_options *options, bal_error *err);
 
 /**
- * Reads one record; its codes go to place n of the columns. reader->ended says that there was none, reader->has_missing that a
- * wanted cell is missing. An unknown label is no failure here: reader->problems holds it.
+ * Reads one record; its codes go to place n of the columns. reader->ended says that there was none, reader->has_missing
+ * that a wanted cell is missing. An unknown label is no failure here: reader->problems holds it.
  *
  * Fails:  as bali_csv_next; SYNTAX "ragged-record", "blank-line", "comment-line"; all in reader->failure.
  */

@@ -29,8 +29,8 @@ static void tell_end(table *t) {
     if (t->reader.place == 0)
         (void)bal_error_set(&notice, BAL_ERR_DATA, "no-records", "the table has a header and no records: an empty batch");
     else
-        (void)bal_error_set(&notice, BAL_ERR_DATA, "no-records", "each of its %zu records has a missing cell, so none is left",
-                            (size_t)t->reader.place);
+        (void)bal_error_set(&notice, BAL_ERR_DATA, "no-records",
+                            "each of its %zu records has a missing cell, so none is left", (size_t)t->reader.place);
     bal_error_place(&notice, bali_csv_name(t->reader.csv), 0, 0);
     notice.status = BAL_OK;
     notices->tell(notices->context, BAL_WARNING, &notice);
@@ -73,7 +73,7 @@ static bal_status next(bal_source *source, bal_block *block, bal_error *err) {
         if (!reader->ended) keep_record(t);
     }
     if (status != BAL_OK || reader->problems.first.status != BAL_OK) {
-        bali_missing_cells missing = {.counts = reader->missing, .incomplete = reader->incomplete, .records = reader->place};
+        bali_missing_cells missing = {reader->missing, reader->incomplete, reader->place};
         bali_problems_conclude(&reader->problems, &missing, &reader->failure);
         return fail(t, err);
     }

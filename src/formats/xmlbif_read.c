@@ -323,9 +323,25 @@ static bal_status take_another_name(reader *r, bool (*add_take)(bali_draft *draf
     return status != BAL_OK || add_take(r->draft, name) ? status : bali_out_of_memory(err);
 }
 
+/* A list of numbers whose = is missing would otherwise be kept as a text that nobody reads. */
+static bal_status check_plain(const reader *r, bal_error *err) {
+    if (r->path[r->depth - 1] != DEFINITION) return BAL_OK;
+    const char *text = bali_text_string(&r->text) + r->blanks;
+    for (bali_draft_list l = BALI_LIST_COUNTS; l < BALI_N_LISTS; l++) {
+        const char *name = bali_draft_list_name(l);
+        size_t length = strlen(name);
+        if (strncmp(text, name, length) == 0 && (text[length] == '\0' || is_blank(text[length])))
+            return bali_draft_fail(r->draft, r->at[r->depth], subject(r), "bad-property", err,
+                                   "a property %s without a =; write \"%s = ...\"", name, name);
+    }
+    return BAL_OK;
+}
+
 static bal_status take_property(reader *r, bal_error *err) {
     if (r->property == NUMBERS) return bali_number_finish(&r->numbers, err);
     bali_draft *draft = r->draft;
+    bal_status status = check_plain(r, err);
+    if (status != BAL_OK) return status;
     if (!bali_grow((void **)&draft->properties, &draft->property_capacity, draft->n_properties + 1,
                    sizeof *draft->properties))
         return bali_out_of_memory(err);

@@ -80,9 +80,14 @@ static void put_support(bali_text *text, const bali_check_facts *facts) {
                                                      : "  that takes the records themselves; counts alone tell it for each family in --json\n");
         return;
     }
-    bali_text_printf(text, "  of 100 new cases, about %.0f will meet a row that no record supports, and about %.0f a cell\n",
+    bali_text words = {0};
+    bali_text_printf(&words, "of 100 new cases, about %.0f will meet a row that no record supports, and about %.0f a cell (the share of records "
+                             "alone in a row, or cell, they need)",
                      100 * support->row_share, 100 * support->cell_share);
-    bali_text_puts(text, "  (share of records alone in a row or cell they need)\n");
+    bali_text_puts(text, "  ");
+    bali_text_put_wrapped(text, bali_text_string(&words), 2, 2);
+    text->failed |= words.failed;
+    bali_text_free(&words);
     put_worst_families(text, facts);
 }
 

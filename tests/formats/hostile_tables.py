@@ -220,6 +220,8 @@ def endless():
     yield Case("delimiters for ever", repeat(b"," * 65536), 1, ["no name"], "1:1", "empty-column", most_read=4 * MEBIBYTE)
     yield Case("columns for ever", endless_columns, 1, ["more than 1048576 columns"], "1:8326075", "too-many-columns", most_read=40 * MEBIBYTE,
                seconds=3)
+    yield Case("a record without an end", first(HEADER + "no,1,home,", repeat(b"x," * 32768)), 1, ["cells or more, expected 3"], "2:11",
+               "ragged-record", most_read=4 * MEBIBYTE)
     yield Case("blank lines for ever", first(PLAIN + "\nno,1,home\n", repeat(b"\n" * 65536)), 1, ["blank line"], "5:1", "blank-line",
                most_read=4 * MEBIBYTE)
 

@@ -1,7 +1,5 @@
-#include "base/memory.h"
 #include "base/text.h"
 #include "formats/csv.h"
-#include "formats/csv_look.h"
 #include "support/harness.h"
 
 #include <stdio.h>
@@ -234,112 +232,6 @@ START_TEST(a_pipe_that_trickles_gives_the_same) {
 }
 END_TEST
 
-START_TEST(a_cell_may_have_a_mebibyte) {
-    static const struct {
-        size_t length;
-        bool quoted;
-        const char *code;
-    } cases[] = {
-        {BALI_CSV_CELL_LIMIT, false, NULL},          {BALI_CSV_CELL_LIMIT + 1, false, "cell-too-long"},
-        {BALI_CSV_CELL_LIMIT, true, NULL},           {BALI_CSV_CELL_LIMIT + 1, true, "unclosed-quote"},
-        {3 * BALI_CSV_CELL_LIMIT, false, "cell-too-long"}, {3 * BALI_CSV_CELL_LIMIT, true, "unclosed-quote"},
-    };
-    /* Some end just before, in and behind the closing quote. */
-    static const size_t chunks[] = {0, 4096, BALI_CSV_CELL_LIMIT - 1, BALI_CSV_CELL_LIMIT + 6, BALI_CSV_CELL_LIMIT + 7,
-                                    BALI_CSV_CELL_LIMIT + 8, 5 * BALI_CSV_CELL_LIMIT};
-    for (size_t i = 0; i < sizeof cases / sizeof cases[0]; i++) {
-        bali_text text = {0};
-        bali_text_puts(&text, cases[i].quoted ? "a,b\nx,\"" : "a,b\nx,");
-        for (size_t n = 0; n < cases[i].length; n++) bali_text_putc(&text, n % 2 ? 'y' : cases[i].quoted ? '\n' : ',' + 1);
-        bali_text_puts(&text, cases[i].quoted ? "\"\n" : "\n");
-        const char *path = scratch_file("long.csv", text.bytes, text.length);
-        for (size_t c = 0; c < sizeof chunks / sizeof chunks[0]; c++) {
-            bali_csv_options options = {.chunk_bytes = chunks[c]};
-            bali_csv *csv = NULL;
-            bali_csv_cell cell;
-            bal_error err = {0};
-            ck_assert_int_eq(bali_csv_open(path, &options, &csv, &err), BAL_OK);
-            for (int k = 0; k < 3; k++) ck_assert_int_eq(bali_csv_next(csv, &cell, &err), BAL_OK);
-            bal_status status = bali_csv_next(csv, &cell, &err);
-            if (cases[i].code) {
-                ck_assert_int_eq(status, BAL_ERR_SYNTAX);
-                ck_assert_str_eq(err.code, cases[i].code);
-                ck_assert_uint_eq(err.line, 2);
-                ck_assert_uint_eq(err.column, 3);
-            } else {
-                ck_assert_int_eq(status, BAL_OK);
-                ck_assert_uint_eq(cell.length, cases[i].length);
-                ck_assert(cell.ends_record);
-            }
-            bali_csv_close(csv);
-        }
-        bali_text_free(&text);
-    }
-}
-END_TEST
-
-/* Columns stay right where the line's start left the buffer long ago. */
-START_TEST(columns_are_counted_over_many_reads) {
-    enum { CELLS = 3000 };
-    bali_text text = {0};
-    for (int i = 0; i < CELLS; i++) bali_text_printf(&text, "%s\xC3\xA9%d", i ? "," : "", i % 10);
-    bali_text_puts(&text, "\n\"p\nq\",r\n");
-    bali_csv_options options = {.chunk_bytes = 64};
-    bali_csv *csv = NULL;
-    bali_csv_cell cell;
-    size_t line, column;
-    ck_assert_int_eq(bali_csv_open(scratch_file("wide.csv", text.bytes, text.length), &options, &csv, NULL), BAL_OK);
-    for (size_t i = 0; i < CELLS; i++) {
-        ck_assert_int_eq(bali_csv_next(csv, &cell, NULL), BAL_OK);
-        if (i % 7 != 0) continue; /* asking or not changes nothing */
-        bali_csv_place(csv, &line, &column);
-        ck_assert_uint_eq(line, 1);
-        ck_assert_uint_eq(column, 3 * i + 1);
-    }
-    ck_assert(cell.ends_record);
-    for (size_t i = 0; i < 2; i++) {
-        ck_assert_int_eq(bali_csv_next(csv, &cell, NULL), BAL_OK);
-        bali_csv_place(csv, &line, &column);
-        ck_assert_uint_eq(line, 2 + i);
-        ck_assert_uint_eq(column, i ? 4 : 1);
-    }
-    bali_csv_close(csv);
-    bali_text_free(&text);
-}
-END_TEST
-
-START_TEST(the_delimiter_is_guessed_or_given) {
-    static const struct {
-        const char *name, *text;
-        char given, delimiter;
-    } cases[] = {
-        {"d.csv", "a,b\n", 0, ','},       {"d.csv", "a\tb\n", 0, '\t'}, {"d.tsv", "a,b\n", 0, '\t'},   {"d.TSV", "ab\n", 0, '\t'},
-        {"d.csv", "\"a\tb\",c\n", 0, ','}, {"d.csv", "a;b\n", 0, ','},   {"d.csv", "a;b\n", ';', ';'},  {"d.tsv", "a,b\n", ',', ','},
-        {"d.csv", "a\nb\tc\n", 0, ','},    {"tsv", "a\n", 0, ','},       {"d.csv", "a|b\n", '|', '|'},
-    };
-    for (size_t i = 0; i < sizeof cases / sizeof cases[0]; i++) {
-        bali_csv_options options = {.delimiter = cases[i].given};
-        bali_csv *csv = NULL;
-        size_t length;
-        ck_assert_int_eq(bali_csv_open(scratch_file(cases[i].name, cases[i].text, strlen(cases[i].text)), &options, &csv, NULL), BAL_OK);
-        ck_assert_msg(bali_csv_delimiter(csv) == cases[i].delimiter, "case %zu", i);
-        const char *line = bali_csv_first_line(csv, &length);
-        ck_assert_uint_eq(length, strcspn(cases[i].text, "\n"));
-        ck_assert(memcmp(line, cases[i].text, length) == 0);
-        bali_csv_close(csv);
-    }
-    static const char wrong[] = "\"\r\n a0\x7F\x80";
-    for (size_t i = 0; i < sizeof wrong - 1; i++) {
-        bali_csv_options options = {.delimiter = wrong[i]};
-        bali_csv *csv = (bali_csv *)1;
-        bal_error err = {0};
-        ck_assert_int_eq(bali_csv_open("any.csv", &options, &csv, &err), BAL_ERR_ARGUMENT);
-        ck_assert_str_eq(err.code, "bad-delimiter");
-        ck_assert_ptr_null(csv);
-    }
-}
-END_TEST
-
 START_TEST(other_delimiters_separate) {
     static const struct {
         char delimiter;
@@ -356,52 +248,6 @@ START_TEST(other_delimiters_separate) {
         ck_assert_str_eq(bali_text_string(&out), cases[i].cells);
         bali_text_free(&out);
     }
-}
-END_TEST
-
-START_TEST(what_is_no_table_is_named) {
-    static const struct {
-        const char *bytes;
-        size_t length;
-        const char *code, *words;
-    } cases[] = {
-        {BYTES("\x1F\x8B\x08\0\0\0\0"), "not-a-table", "gunzip"},
-        {BYTES("PK\x03\x04\x14\0"), "not-a-table", "spreadsheet"},
-        {BYTES("%PDF-1.7\n"), "not-a-table", "PDF"},
-        {BYTES("\xD0\xCF\x11\xE0\xA1\xB1\x1A\xE1"), "not-a-table", "spreadsheet"},
-        {BYTES("\xFF\xFE" "a\0,\0"), "encoding", "iconv -f UTF-16 -t UTF-8"},
-        {BYTES("\xFE\xFF\0a\0,"), "encoding", "iconv -f UTF-16 -t UTF-8"},
-        {BYTES("a\0,\0b\0\n\0"), "encoding", "UTF-16LE"},
-        {BYTES("\0a\0,\0b\0\n"), "encoding", "UTF-16BE"},
-        {BYTES("\xFF\xFE\0\0a\0\0\0"), "encoding", "UTF-32"},
-        {BYTES("<?xml version=\"1.0\"?><BIF/>"), "not-a-table", "network"},
-        {BYTES("\xEF\xBB\xBF\n <!DOCTYPE html>"), "not-a-table", "HTML"},
-        {BYTES("<HTML><body>"), "not-a-table", "HTML"},
-        {BYTES("sep=;\na;b\n"), "sep-line", "--delimiter"},
-        {BYTES("\xEF\xBB\xBFsep=,\r\na,b\n"), "sep-line", "remove the line"},
-        {BYTES("SEP=\t\na\tb\n"), "sep-line", "remove the line"},
-    };
-    for (size_t i = 0; i < sizeof cases / sizeof cases[0]; i++) {
-        bali_csv_options options = {0};
-        bali_csv *csv = (bali_csv *)1;
-        bal_error err = {0};
-        const char *path = scratch_file("odd.csv", cases[i].bytes, cases[i].length);
-        ck_assert_msg(bali_csv_open(path, &options, &csv, &err) == BAL_ERR_SYNTAX, "case %zu is taken for a table", i);
-        ck_assert_ptr_null(csv);
-        ck_assert_str_eq(err.code, cases[i].code);
-        ck_assert_ptr_nonnull(bal_code_find(err.code));
-        ck_assert_msg(strstr(err.message, cases[i].words) != NULL, "%s", err.message);
-        ck_assert_str_eq(err.file, path);
-        ck_assert_uint_eq(err.line, 1);
-        ck_assert_uint_eq(err.column, 1);
-    }
-    /* What only resembles them is a table. */
-    static const char *const tables[] = {"<5,>=5\n", "sep=\n", "separator\n", "PK\n", "BZh,b\n", "%PDF\n"};
-    for (size_t i = 0; i < sizeof tables / sizeof tables[0]; i++) {
-        bal_error err = {0};
-        ck_assert_msg(bali_csv_look(tables[i], strlen(tables[i]), &err) == BAL_OK, "%s", err.message);
-    }
-    ck_assert_int_eq(bali_csv_look("a\0b,c\n", 6, NULL), BAL_OK); /* one NUL is refused where it stands */
 }
 END_TEST
 
@@ -434,77 +280,6 @@ START_TEST(messages_show_what_they_may) {
 }
 END_TEST
 
-START_TEST(a_file_is_read_again_and_hashed_once) {
-    /* The digest is the first example of FIPS 180-4: SHA-256 of "abc". */
-    static const char digest[] = "ba7816bf8f01cfea414140de5dae2223b00361a396177a9cb410ff61f20015ad";
-    bali_csv_options options = {.chunk_bytes = 2};
-    bali_csv *csv = NULL;
-    bali_csv_cell cell;
-    bal_file_facts facts;
-    ck_assert_int_eq(bali_csv_open(scratch_file("facts.csv", "abc", 3), &options, &csv, NULL), BAL_OK);
-    ck_assert(bali_csv_can_rewind(csv));
-    ck_assert_int_eq(bali_csv_rewind(csv, NULL), BAL_OK); /* before the end: the hash starts anew */
-    for (int pass = 0; pass < 3; pass++) {
-        ck_assert_int_eq(bali_csv_next(csv, &cell, NULL), BAL_OK);
-        ck_assert(cell.length == 3 && memcmp(cell.text, "abc", 3) == 0 && cell.ends_record);
-        ck_assert_int_eq(bali_csv_next(csv, &cell, NULL), BAL_OK);
-        ck_assert_ptr_null(cell.text);
-        ck_assert_int_eq(bali_csv_next(csv, &cell, NULL), BAL_OK);
-        ck_assert_ptr_null(cell.text);
-        bali_csv_facts(csv, &facts);
-        ck_assert_str_eq(facts.name, "facts.csv");
-        ck_assert_uint_eq(facts.bytes, 3);
-        ck_assert_str_eq(facts.sha256, digest);
-        ck_assert_int_eq(bali_csv_rewind(csv, NULL), BAL_OK);
-    }
-    bali_csv_close(csv);
-}
-END_TEST
-
-START_TEST(a_pass_that_was_left_is_not_hashed) {
-    bali_text text = {0};
-    for (int i = 0; i < 500; i++) bali_text_printf(&text, "line,%d\n", i);
-    const char *path = scratch_file("left.csv", text.bytes, text.length);
-    bal_file_facts facts[2];
-    for (int left = 0; left < 2; left++) {
-        bali_csv_options options = {.chunk_bytes = 100};
-        bali_csv *csv = NULL;
-        bali_csv_cell cell = {.text = ""};
-        ck_assert_int_eq(bali_csv_open(path, &options, &csv, NULL), BAL_OK);
-        for (int i = 0; left && i < 300; i++) ck_assert_int_eq(bali_csv_next(csv, &cell, NULL), BAL_OK);
-        if (left) ck_assert_int_eq(bali_csv_rewind(csv, NULL), BAL_OK);
-        while (cell.text) ck_assert_int_eq(bali_csv_next(csv, &cell, NULL), BAL_OK);
-        bali_csv_facts(csv, &facts[left]);
-        bali_csv_close(csv);
-    }
-    ck_assert_uint_eq(strlen(facts[0].sha256), 64);
-    ck_assert_str_eq(facts[0].sha256, facts[1].sha256);
-    ck_assert_uint_eq(facts[1].bytes, text.length);
-    bali_text_free(&text);
-}
-END_TEST
-
-START_TEST(large_files_are_not_hashed) {
-    for (size_t over = 0; over < 2; over++) {
-        size_t length = ((size_t)8 << 20) + over;
-        char *bytes = bali_allocate(length, 1);
-        memset(bytes, 'x', length);
-        for (size_t i = 99; i < length; i += 100) bytes[i] = '\n';
-        bali_csv_options options = {0};
-        bali_csv *csv = NULL;
-        bali_csv_cell cell = {.text = ""};
-        bal_file_facts facts;
-        ck_assert_int_eq(bali_csv_open(scratch_file("large.csv", bytes, length), &options, &csv, NULL), BAL_OK);
-        while (cell.text) ck_assert_int_eq(bali_csv_next(csv, &cell, NULL), BAL_OK);
-        bali_csv_facts(csv, &facts);
-        ck_assert_uint_eq(facts.bytes, length);
-        ck_assert_uint_eq(strlen(facts.sha256), over ? 0 : 64);
-        bali_csv_close(csv);
-        bali_free(bytes);
-    }
-}
-END_TEST
-
 static bal_status read_it_all(void *context, bal_error *err) {
     bali_csv_options options = {.chunk_bytes = 5};
     bali_csv *csv = NULL;
@@ -524,52 +299,18 @@ START_TEST(memory_may_run_out_anywhere) {
 }
 END_TEST
 
-START_TEST(a_line_is_split_outside_quotes) {
-    static const struct {
-        const char *line;
-        const char *pieces[5];
-    } cases[] = {
-        {"", {""}},
-        {"a", {"a"}},
-        {"a;b", {"a", "b"}},
-        {" a ;\"b;c\"; \"d\" ;", {"a", "b;c", "d", ""}},
-        {"\"", {"\""}},
-    };
-    for (size_t i = 0; i < sizeof cases / sizeof cases[0]; i++) {
-        const char *piece;
-        size_t at = 0, length, n = 0;
-        while (bali_csv_split(cases[i].line, strlen(cases[i].line), ';', &at, &piece, &length)) {
-            ck_assert_ptr_nonnull(cases[i].pieces[n]);
-            ck_assert_uint_eq(length, strlen(cases[i].pieces[n]));
-            ck_assert(memcmp(piece, cases[i].pieces[n++], length) == 0);
-        }
-        ck_assert_ptr_null(cases[i].pieces[n]);
-    }
-}
-END_TEST
-
 static Suite *suite(void) {
     Suite *suite = suite_create("csv");
-    TCase *cells = tcase_create("cells"), *files = tcase_create("files");
-    int n = sizeof readings / sizeof readings[0];
-    tcase_add_loop_test(cells, cells_are_read, 0, n);
-    tcase_add_loop_test(cells, the_size_of_a_read_changes_nothing, 0, n);
-    tcase_add_loop_test(cells, a_pipe_that_trickles_gives_the_same, 0, n);
-    tcase_add_test(cells, every_short_file_is_read_as_by_the_slow_twin);
-    tcase_add_test(cells, a_cell_may_have_a_mebibyte);
-    tcase_add_test(cells, columns_are_counted_over_many_reads);
-    tcase_add_test(cells, other_delimiters_separate);
-    tcase_add_test(cells, messages_show_what_they_may);
-    tcase_add_test(files, the_delimiter_is_guessed_or_given);
-    tcase_add_test(files, what_is_no_table_is_named);
-    tcase_add_test(files, a_file_is_read_again_and_hashed_once);
-    tcase_add_test(files, a_pass_that_was_left_is_not_hashed);
-    tcase_add_test(files, large_files_are_not_hashed);
-    tcase_add_test(files, memory_may_run_out_anywhere);
-    tcase_add_test(files, a_line_is_split_outside_quotes);
-    tcase_set_timeout(cells, 60);
-    suite_add_tcase(suite, cells);
-    suite_add_tcase(suite, files);
+    TCase *tests = tcase_create("csv");
+    tcase_add_loop_test(tests, cells_are_read, 0, sizeof readings / sizeof readings[0]);
+    tcase_add_loop_test(tests, the_size_of_a_read_changes_nothing, 0, sizeof readings / sizeof readings[0]);
+    tcase_add_test(tests, every_short_file_is_read_as_by_the_slow_twin);
+    tcase_add_loop_test(tests, a_pipe_that_trickles_gives_the_same, 0, sizeof readings / sizeof readings[0]);
+    tcase_add_test(tests, other_delimiters_separate);
+    tcase_add_test(tests, messages_show_what_they_may);
+    tcase_add_test(tests, memory_may_run_out_anywhere);
+    tcase_set_timeout(tests, 60);
+    suite_add_tcase(suite, tests);
     return suite;
 }
 

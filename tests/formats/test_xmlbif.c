@@ -187,6 +187,10 @@ START_TEST(a_file_is_refused_with_its_place) {
          "\"0\" is not more than 0"},
         {"<DEFINITION><FOR>cough</FOR><PROPERTY>ballast.row-ess =</PROPERTY></DEFINITION>", 0, 29, "table-size",
          "has 0 numbers"},
+        {"<DEFINITION><FOR>cough</FOR><PROPERTY>\nballast.counts 1 2 3</PROPERTY></DEFINITION>", 0, 29, "bad-property",
+         "a property ballast.counts without a =; write \"ballast.counts = ...\""},
+        {"<DEFINITION><FOR>cough</FOR><PROPERTY>ballast.row-ess</PROPERTY></DEFINITION>", 0, 29, "bad-property",
+         "a property ballast.row-ess without a ="},
         /* elements */
         {"<TABLE>1</TABLE>", 0, 1, "misplaced-element", "<TABLE> cannot stand in <NETWORK>"},
         {"<VARIABLE><FOR>a</FOR></VARIABLE>", 0, 11, "misplaced-element", "<FOR> cannot stand in <VARIABLE>"},

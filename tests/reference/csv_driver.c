@@ -1,9 +1,9 @@
 /* csv_driver DOMAIN TABLE [OPTION VALUE]...: prints the codes of a table's records, for tests in other languages.
  *
- * DOMAIN is a text file, one line a variable: its name and its outcomes with tabs between. TABLE may be "-". The options are
- * those of the program: --missing stop|drop, --missing-label TEXT, --delimiter CHARACTER, and the flags --strict, --redact,
- * --allow-absent. A record is a line: its place, then a code a variable, "-" where it is missing, "~" without a column. What the
- * library says goes to standard error as the program would print it, and so does the exit status. */
+ * DOMAIN is a text file, one line a variable: its name and its outcomes with tabs between. TABLE may be "-". The options
+ * are those of the program: --missing stop|drop, --missing-label TEXT, --delimiter CHARACTER, and the flags --strict,
+ * --redact, --allow-absent. A record is a line: its place, then a code a variable, "-" where it is missing, "~" without a
+ * column. What the library says goes to standard error as the program would print it; the exit status is the program's. */
 #include "ballast/formats.h"
 
 #include <inttypes.h>
@@ -11,11 +11,11 @@
 #include <stdlib.h>
 #include <string.h>
 
-enum { MOST_VARIABLES = 4096, MOST_OUTCOMES = 70000 };
+enum { MOST_VARIABLES = 4096, MOST_OUTCOMES = 70000, MOST_MISSING_LABELS = 16 };
 
 static const char *outcomes[MOST_OUTCOMES];
 static bal_variable_spec variables[MOST_VARIABLES];
-static const char *missing_labels[16];
+static const char *missing_labels[MOST_MISSING_LABELS];
 
 static void tell(void *context, bal_severity severity, const bal_error *notice) {
     static const char *const prefixes[] = {"note: ", "warning: ", ""};
@@ -68,13 +68,20 @@ static void read_options(int n, char **arguments, bal_table_options *options) {
     options->missing_labels = missing_labels;
     for (int i = 0; i < n; i++) {
         const char *name = arguments[i], *value = i + 1 < n ? arguments[i + 1] : "";
-        if (strcmp(name, "--strict") == 0) options->strict = true;
-        else if (strcmp(name, "--redact") == 0) options->redact = true;
-        else if (strcmp(name, "--allow-absent") == 0) options->allow_absent = true;
-        else if (strcmp(name, "--missing") == 0) options->missing = strcmp(value, "drop") == 0 ? BAL_MISSING_DROP : BAL_MISSING_STOP, i++;
-        else if (strcmp(name, "--delimiter") == 0) options->delimiter = value[0] == '\\' ? '\t' : value[0], i++;
-        else if (strcmp(name, "--missing-label") == 0 && options->n_missing_labels < 16) missing_labels[options->n_missing_labels++] = value, i++;
-        else exit(2);
+        if (strcmp(name, "--strict") == 0) {
+            options->strict = true;
+        } else if (strcmp(name, "--redact") == 0) {
+            options->redact = true;
+        } else if (strcmp(name, "--allow-absent") == 0) {
+            options->allow_absent = true;
+        } else {
+            i++;
+            if (strcmp(name, "--missing") == 0 && strcmp(value, "drop") == 0) options->missing = BAL_MISSING_DROP;
+            else if (strcmp(name, "--delimiter") == 0) options->delimiter = value[0] == '\\' ? '\t' : value[0];
+            else if (strcmp(name, "--missing-label") == 0 && options->n_missing_labels < MOST_MISSING_LABELS)
+                missing_labels[options->n_missing_labels++] = value;
+            else exit(2);
+        }
     }
 }
 

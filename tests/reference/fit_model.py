@@ -168,7 +168,10 @@ def expected_fit(network, table, prior, got, level=0.95, folds=10, seed=1, count
     if table and folds and records:
         heldout = HeldOut(network, table, prior, folds, seed).nearest(got["heldout"]["bayes"]["log_likelihood"])
     chosen = prior.get("by", "given")
-    return dict(head("fit", network, table, records),
+    facts = head("fit", network, table, records)
+    # A structural zero is no free parameter: a row has as many as outcomes that can happen, less one.
+    facts["network"] = dict(facts["network"], free_parameters=sum(int((a > 0).sum() - len(a)) for a in alpha.values()))
+    return dict(facts,
                 prior={"kind": prior["kind"], "ess": strength if ess_kind else None,
                        "ess_chosen": chosen if ess_kind else None, "strength": None, "lean": None, "scale": None if ess_kind else strength,
                        "scale_chosen": None if ess_kind else chosen, "row_ess": prior.get("row_ess"),

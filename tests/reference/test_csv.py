@@ -136,6 +136,7 @@ def check(driver, folder, seed):
         f.write("".join("\t".join([name] + outcomes) + "\n" for name, outcomes in domain))
     done = subprocess.run([driver, names, table, "--missing", "drop", "--delimiter", delimiter], capture_output=True, timeout=60)
     output, messages = done.stdout.decode(), done.stderr.decode()
+    os.unlink(table)  # some file systems write a file out at once when it takes another's place
     if wrong:
         at = "%s:%d:%d: " % (table, wrong[0], wrong[1])
         told = [line for line in messages.split("\n") if line.startswith(table) and "[unknown-label]" in line]
