@@ -48,7 +48,7 @@ typedef struct bal_heldout {
     double bayes_on_others;      /* log-likelihood per record on impossible and undefined records */
     double break_even;           /* what ML would need per record on the others to tie on all; NaN when there are none */
     bal_paired quadratic;        /* quadratic score per record, all records; lower is better */
-    double least_strength, largest_strength; /* of the prior, over the training parts */
+    double least_strength, largest_strength; /* of the prior, over the training parts; NaN without records */
 } bal_heldout;
 
 /** More records than this are not scored: bal_heldout_folds refuses. */
@@ -71,11 +71,13 @@ BAL_API uint64_t bal_fold_key(uint64_t seed, uint64_t repeat);
  * counts  of the whole source, as bal_tally gives them
  * source  is rewound and gone over
  *
- * Fails:  ARGUMENT for folds out of range; DATA beyond BAL_HELDOUT_MOST_RECORDS; whatever the source meets;
- *         MEMORY; NUMERIC.
+ * Fails:  ARGUMENT for folds out of range, and when the source has other variables; DATA beyond
+ *         BAL_HELDOUT_MOST_RECORDS, and "changed-while-read" when the source's records are not those of the counts;
+ *         whatever the source meets; MEMORY; NUMERIC.
  * Cost:   two passes over the records, O(records x (variables + arcs)), and folds times the cost of settling the
- *         prior; 8 bytes a cell and fold with records for the folds' counts, and at most prediction_bytes (or one fold's 48 bytes a
- *         cell, if that is more) for their predictions: where that is not enough for all folds, more passes.
+ *         prior; 8 bytes a cell and fold with records for the folds' counts, and at most prediction_bytes (or one
+ *         fold's 48 bytes a cell, if that is more) for their predictions: where that is not enough for all folds, more
+ *         passes.
  * Source: the impossible/undefined/comparable split is direct; Brier 1950 for the quadratic score.
  */
 BAL_API BAL_MUST_CHECK bal_status bal_heldout_folds(const bal_prior *prior, const bal_cells *counts, bal_source *source,
@@ -96,7 +98,7 @@ typedef struct bal_support {
  * counts, source  as above; source may be NULL: then out is NaN
  * row_shares, cell_shares  one a variable: the share for that family alone; may be NULL
  *
- * Fails:  whatever the source meets; MEMORY.
+ * Fails:  ARGUMENT when the source has other variables; whatever the source meets; MEMORY.
  * Source: Good, Biometrika 40 (1953) 237-264, equation (9) for the missing mass.
  */
 BAL_API BAL_MUST_CHECK bal_status bal_support_measure(const bal_cells *counts, bal_source *source, bal_support *out,

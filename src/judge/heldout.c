@@ -12,6 +12,7 @@
 #include "judge/outlook.h"
 #include "learn/indexing.h"
 #include "model/cells.h"
+#include "model/domain.h"
 
 #include <math.h>
 
@@ -276,7 +277,10 @@ static void summarise(const heldout *h, bal_heldout *out) {
     report_strengths(h, out);
 }
 
-static bal_status check_options(const bal_cells *counts, const bal_heldout_options *options, bal_error *err) {
+static bal_status check_options(const bal_cells *counts, const bal_source *source, const bal_heldout_options *options, bal_error *err) {
+    if (!bali_domain_equal(bal_network_domain(bal_cells_network(counts)), bal_source_domain(source)))
+        return bal_error_set(err, BAL_ERR_ARGUMENT, "other-network",
+                             "the records follow other variables than the counts; use records of the same variables");
     if (options->folds < 2 || options->folds > BAL_HELDOUT_MOST_FOLDS)
         return bal_error_set(err, BAL_ERR_ARGUMENT, "bad-folds", "%zu folds are not possible; use 2 to %zu", options->folds,
                              BAL_HELDOUT_MOST_FOLDS);
@@ -309,7 +313,7 @@ static void free_folds(heldout *h) {
 
 bal_status bal_heldout_folds(const bal_prior *prior, const bal_cells *counts, bal_source *source, const bal_heldout_options *options,
                              bal_heldout *out, bal_error *err) {
-    bal_status status = check_options(counts, options, err);
+    bal_status status = check_options(counts, source, options, err);
     if (status != BAL_OK) return status;
     heldout h = {.prior = prior,
                  .counts = counts,

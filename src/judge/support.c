@@ -4,6 +4,7 @@
 #include "base/memory.h"
 #include "learn/indexing.h"
 #include "model/cells.h"
+#include "model/domain.h"
 
 #include <math.h>
 
@@ -61,6 +62,9 @@ bal_status bal_support_measure(const bal_cells *counts, bal_source *source, bal_
                                bal_error *err) {
     const bal_network *network = bal_cells_network(counts);
     alone a = {.network = network};
+    if (source && !bali_domain_equal(bal_network_domain(network), bal_source_domain(source)))
+        return bal_error_set(err, BAL_ERR_ARGUMENT, "other-network",
+                             "the records follow other variables than the counts; use records of the same variables");
     uint8_t *marks = bali_allocate(bal_network_cells(network), 1);
     bal_status status = marks ? BAL_OK : bali_out_of_memory(err);
     for (size_t v = 0; v < bal_network_variables(network) && status == BAL_OK; v++)

@@ -4,6 +4,7 @@
 #include "learn/indexing.h"
 #include "learn/prior_parts.h"
 #include "model/cells.h"
+#include "model/domain.h"
 #include "model/shape.h"
 
 bal_status bali_refuse_zero(const bal_network *network, size_t variable, size_t cell, bal_error *err) {
@@ -55,6 +56,7 @@ static bool find_record(const bal_prior *prior, bal_source *source, size_t *vari
     uint32_t *cells = NULL;
     size_t capacity = 0;
     bal_block block;
+    if (!bali_domain_equal(bal_network_domain(prior->network), bal_source_domain(source))) return false;
     if (bal_source_rewind(source, NULL) != BAL_OK) return false;
     while (!found && bal_source_next(source, &block, NULL) == BAL_OK && block.n_records > 0) {
         if (!bali_grow((void **)&cells, &capacity, block.n_records, sizeof *cells)) break;

@@ -127,11 +127,13 @@ START_TEST(going_back_gives_the_same) {
 }
 END_TEST
 
-/* Counts of 60,000 records against the tables. The chi-squares of the rows add up; 48.72 is the 99.999 % point for 14 degrees of freedom
- * (Python's mpmath): 2 of A, 3 x 3 of B given A, 3 of C, none where an outcome has probability 0 or 1. */
+/* Counts of 60,000 records against the tables. The chi-squares of the rows add up; 48.72 is the 99.999 % point for 14
+ * degrees of freedom (Python's mpmath): 2 of A, 3 x 3 of B given A, 3 of C, none where an outcome has probability 0 or
+ * 1. */
 START_TEST(frequencies_are_those_of_the_tables) {
     bal_network *network = network_of("A:#3 ; B:#4 | A ; C:#2 | A");
-    static const double values[] = {0.2, 0.5, 0.3, /**/ 0.1, 0.2, 0.3, 0.4, 0.25, 0.25, 0.25, 0.25, 0.01, 0.01, 0.97, 0.01, /**/ 0.5, 0.5, 0.9, 0.1, 0.001, 0.999};
+    static const double values[] = {0.2, 0.5, 0.3, /**/ 0.1, 0.2, 0.3, 0.4, 0.25, 0.25, 0.25, 0.25, 0.01, 0.01, 0.97, 0.01,
+                                    /**/ 0.5, 0.5, 0.9, 0.1, 0.001, 0.999};
     bal_cells *tables = cells_of(network, values), *counts = NULL;
     bal_source *source = draw(tables, 60000, 1);
     ck_assert_int_eq(bal_tally(network, source, &counts, NULL), BAL_OK);

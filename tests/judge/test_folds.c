@@ -4,8 +4,8 @@
 
 #include <stdlib.h>
 
-/* The rule again, from its words: splitmix64(s, i) = mix(mix(s + g) + (i + 1) g), g = 0x9E3779B97F4A7C15, mix the finaliser of Steele,
- * Lea & Flood 2014. */
+/* The rule again, from its words: splitmix64(s, i) = mix(mix(s + g) + (i + 1) g), g = 0x9E3779B97F4A7C15, mix the
+ * finaliser of Steele, Lea & Flood 2014. */
 static uint64_t own_mix(uint64_t z) {
     z = (z ^ (z >> 30)) * 0xBF58476D1CE4E5B9u;
     z = (z ^ (z >> 27)) * 0x94D049BB133111EBu;
@@ -17,8 +17,8 @@ static uint64_t own_splitmix64(uint64_t s, uint64_t i) {
     return own_mix(own_mix(s + g) + (i + 1) * g);
 }
 
-/* Of each run of K consecutive records b K ... b K + K - 1, record b K + t is in fold p[t], p the identity shuffled by: for t = K - 1 down
- * to 1 swap p[t] and p[splitmix64(key, b K + t) mod (t + 1)]. */
+/* Of each run of K consecutive records b K ... b K + K - 1, record b K + t is in fold p[t], p the identity shuffled by:
+ * for t = K - 1 down to 1 swap p[t] and p[splitmix64(key, b K + t) mod (t + 1)]. */
 static size_t own_fold(uint64_t key, size_t n_folds, uint64_t record) {
     uint64_t b = record / n_folds;
     size_t *p = malloc(n_folds * sizeof *p);
@@ -80,8 +80,9 @@ START_TEST(folds_differ_in_size_by_at_most_one) {
 }
 END_TEST
 
-/* A shuffle that preferred some place would give itself away over many runs. (K - 1)/K times the usual sum over the K x K places is
- * chi-square with (K - 1)^2 degrees of freedom, since every run is a permutation; 39.34 is the 99.999 % point for 9 (Python's mpmath). */
+/* A shuffle that preferred some place would give itself away over many runs. (K - 1)/K times the usual sum over the K x
+ * K places is chi-square with (K - 1)^2 degrees of freedom, since every run is a permutation; 39.34 is the 99.999 %
+ * point for 9 (Python's mpmath). */
 START_TEST(every_fold_is_as_likely_in_every_place) {
     enum { K = 4, RUNS = 40000 };
     size_t seen[K][K] = {{0}}, folds[K];

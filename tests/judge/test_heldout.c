@@ -3,165 +3,12 @@
 #include "ballast/score.h"
 #include "ballast/tally.h"
 #include "support/fixtures.h"
+#include "support/heldout_twin.h"
 
 #include <math.h>
 #include <stdlib.h>
 #include <string.h>
 #include <time.h>
-
-/* ---- the slow, obvious twin: one record after another, every fold refitted from its records ---- */
-
-enum { MOST_RECORDS = 400 };
-
-typedef struct twin_record {
-    bool incomplete, impossible, undefined;
-    double log_bayes, log_prior, log_ml, quadratic_bayes, quadratic_ml;
-} twin_record;
-
-/* What the records are, and how they are held out. */
-typedef struct trial {
-    bal_network *network;
-    const bal_prior *prior;
-    int *codes;
-    uint64_t places[MOST_RECORDS];
-    size_t n_records, n_folds;
-    uint64_t seed;
-} trial;
-
-static size_t fold_of(const trial *t, size_t record) {
-    size_t *run = malloc(t->n_folds * sizeof *run);
-    ck_assert_ptr_nonnull(run);
-    bal_fold_run(bal_fold_key(t->seed, 0), t->places[record] / t->n_folds, t->n_folds, run); /* test_folds.c has the rule */
-    size_t fold = run[t->places[record] % t->n_folds];
-    free(run);
-    return fold;
-}
-
-static bal_cells *training_counts(const trial *t, const size_t *folds, size_t fold) {
-    size_t n = bal_network_variables(t->network);
-    bal_cells *counts = equal_cells(t->network, 0);
-    for (size_t i = 0; i < t->n_records; i++)
-        for (size_t v = 0; v < n && folds[i] != fold; v++) {
-            size_t cell = cell_of(t->network, v, t->codes + i * n);
-            if (cell != BAL_NONE) bal_cells_edit(counts, v)[cell] += 1;
-        }
-    return counts;
-}
-
-/* sum_k (p_k - 1[k = outcome])^2 */
-static double quadratic(const double *p, size_t r, size_t outcome) {
-    double sum = 0;
-    for (size_t k = 0; k < r; k++) sum += (p[k] - (k == outcome)) * (p[k] - (k == outcome));
-    return sum;
-}
-
-static void predict_family(const double *alpha, const double *n, size_t r, size_t outcome, twin_record *record) {
-    double bayes[16], ml[16], alpha_total = 0, total = 0, n_total = 0;
-    for (size_t k = 0; k < r; k++) {
-        bayes[k] = alpha[k] > 0 ? alpha[k] + n[k] : 0; /* a structural zero */
-        alpha_total += alpha[k];
-        total += bayes[k];
-        n_total += n[k];
-    }
-    for (size_t k = 0; k < r; k++) {
-        bayes[k] /= total;
-        ml[k] = n_total > 0 ? n[k] / n_total : 1 / (double)r;
-    }
-    if (n_total > 0 && n[outcome] <= 0) record->impossible = true;
-    if (n_total <= 0) record->undefined = true;
-    record->log_bayes += log(bayes[outcome]);
-    record->log_prior += log(alpha[outcome] / alpha_total);
-    record->log_ml += log(ml[outcome]);
-    record->quadratic_bayes += quadratic(bayes, r, outcome);
-    record->quadratic_ml += quadratic(ml, r, outcome);
-}
-
-static void predict_record(const trial *t, const int *codes, const bal_cells *alpha, const bal_cells *training, twin_record *record) {
-    for (size_t v = 0; v < bal_network_variables(t->network); v++) {
-        size_t cell = cell_of(t->network, v, codes), r = bal_network_outcomes(t->network, v);
-        if (cell == BAL_NONE) {
-            record->incomplete = true;
-            return;
-        }
-        predict_family(bal_cells_family(alpha, v) + cell / r * r, bal_cells_family(training, v) + cell / r * r, r, cell % r, record);
-    }
-}
-
-static void predict_fold(const trial *t, const size_t *folds, size_t fold, twin_record *records, bal_heldout *out) {
-    size_t scored = 0;
-    bal_strength strength;
-    bal_cells *training = training_counts(t, folds, fold), *alpha = equal_cells(t->network, 0);
-    ck_assert_int_eq(bal_prior_settle(t->prior, training, &strength, NULL), BAL_OK);
-    bal_prior_fill(t->prior, strength.value, alpha);
-    for (size_t i = 0; i < t->n_records; i++) {
-        if (folds[i] != fold) continue;
-        predict_record(t, t->codes + i * bal_network_variables(t->network), alpha, training, &records[i]);
-        scored += !records[i].incomplete;
-    }
-    if (scored > 0) {
-        out->least_strength = fmin(out->least_strength, strength.value); /* NaN at the start gives way */
-        out->largest_strength = fmax(out->largest_strength, strength.value);
-    }
-    bal_cells_free(training);
-    bal_cells_free(alpha);
-}
-
-/* Means, the paired difference, and its standard error by the sample standard deviation over sqrt n. */
-static bal_paired pair(const double *bayes, const double *ml, size_t n) {
-    double sum_bayes = 0, sum_ml = 0, squares = 0;
-    for (size_t i = 0; i < n; i++) {
-        sum_bayes += bayes[i];
-        sum_ml += ml[i];
-    }
-    bal_paired p = {sum_bayes / (double)n, sum_ml / (double)n, (sum_bayes - sum_ml) / (double)n, NAN};
-    for (size_t i = 0; i < n; i++) squares += (bayes[i] - ml[i] - p.mean_difference) * (bayes[i] - ml[i] - p.mean_difference);
-    if (n >= 2) p.standard_error = sqrt(squares / (double)(n - 1)) / sqrt((double)n);
-    return p;
-}
-
-static void sum_up(const twin_record *records, size_t n_records, bal_heldout *out) {
-    double bayes[MOST_RECORDS] = {0}, ml[MOST_RECORDS] = {0}, quadratic_bayes[MOST_RECORDS] = {0}, quadratic_ml[MOST_RECORDS] = {0};
-    double others = 0, ml_total = 0;
-    for (size_t i = 0; i < n_records; i++) {
-        const twin_record *r = &records[i];
-        if (r->incomplete) {
-            out->incomplete++;
-            continue;
-        }
-        quadratic_bayes[out->records] = r->quadratic_bayes;
-        quadratic_ml[out->records++] = r->quadratic_ml;
-        out->bayes_log_likelihood += r->log_bayes;
-        out->prior_log_likelihood += r->log_prior;
-        out->bayes_impossible += r->log_bayes == -INFINITY;
-        if (r->impossible) out->impossible++;
-        else if (r->undefined) out->undefined++;
-        if (r->impossible || r->undefined) {
-            others += r->log_bayes;
-        } else {
-            ml_total += r->log_ml;
-            bayes[out->comparable] = r->log_bayes;
-            ml[out->comparable++] = r->log_ml;
-        }
-    }
-    double n_others = (double)(out->impossible + out->undefined);
-    out->ml_log_likelihood = out->impossible ? -INFINITY : out->undefined ? NAN : ml_total;
-    out->on_comparable = pair(bayes, ml, out->comparable);
-    out->bayes_on_others = others / n_others;
-    out->break_even = n_others > 0 ? (out->bayes_log_likelihood - ml_total) / n_others : NAN;
-    out->quadratic = pair(quadratic_bayes, quadratic_ml, out->records);
-}
-
-static bal_heldout twin(const trial *t) {
-    bal_heldout out = {.least_strength = NAN, .largest_strength = NAN};
-    twin_record *records = calloc(MOST_RECORDS, sizeof *records);
-    size_t folds[MOST_RECORDS];
-    ck_assert_ptr_nonnull(records);
-    for (size_t i = 0; i < t->n_records; i++) folds[i] = fold_of(t, i);
-    for (size_t f = 0; f < t->n_folds; f++) predict_fold(t, folds, f, records, &out);
-    sum_up(records, t->n_records, &out);
-    free(records);
-    return out;
-}
 
 /* ---- comparing ---- */
 
@@ -170,11 +17,12 @@ static bool close(double a, double b) {
 }
 
 static void check_paired(const bal_paired *got, const bal_paired *expected, const char *what, int seed) {
-    ck_assert_msg(close(got->bayes, expected->bayes) && close(got->ml, expected->ml) && close(got->mean_difference, expected->mean_difference),
-                  "seed %d, %s: %.17g %.17g %.17g, expected %.17g %.17g %.17g", seed, what, got->bayes, got->ml, got->mean_difference,
-                  expected->bayes, expected->ml, expected->mean_difference);
-    ck_assert_msg(close(got->standard_error, expected->standard_error), "seed %d, %s: standard error %.17g, expected %.17g", seed, what,
-                  got->standard_error, expected->standard_error);
+    ck_assert_msg(close(got->bayes, expected->bayes) && close(got->ml, expected->ml) &&
+                      close(got->mean_difference, expected->mean_difference),
+                  "seed %d, %s: %.17g %.17g %.17g, expected %.17g %.17g %.17g", seed, what, got->bayes, got->ml,
+                  got->mean_difference, expected->bayes, expected->ml, expected->mean_difference);
+    ck_assert_msg(close(got->standard_error, expected->standard_error), "seed %d, %s: standard error %.17g, expected %.17g",
+                  seed, what, got->standard_error, expected->standard_error);
 }
 
 static void check_heldout(const bal_heldout *got, const bal_heldout *expected, int seed) {
@@ -188,14 +36,17 @@ static void check_heldout(const bal_heldout *got, const bal_heldout *expected, i
         const char *name;
         double got, expected;
     } numbers[] = {
-        {"bayes", got->bayes_log_likelihood, expected->bayes_log_likelihood}, {"ml", got->ml_log_likelihood, expected->ml_log_likelihood},
-        {"prior", got->prior_log_likelihood, expected->prior_log_likelihood}, {"others", got->bayes_on_others, expected->bayes_on_others},
-        {"break-even", got->break_even, expected->break_even},                {"least strength", got->least_strength, expected->least_strength},
+        {"bayes", got->bayes_log_likelihood, expected->bayes_log_likelihood},
+        {"ml", got->ml_log_likelihood, expected->ml_log_likelihood},
+        {"prior", got->prior_log_likelihood, expected->prior_log_likelihood},
+        {"others", got->bayes_on_others, expected->bayes_on_others},
+        {"break-even", got->break_even, expected->break_even},
+        {"least strength", got->least_strength, expected->least_strength},
         {"largest strength", got->largest_strength, expected->largest_strength},
     };
     for (size_t i = 0; i < sizeof numbers / sizeof numbers[0]; i++)
-        ck_assert_msg(close(numbers[i].got, numbers[i].expected), "seed %d, %s: %.17g, expected %.17g", seed, numbers[i].name, numbers[i].got,
-                      numbers[i].expected);
+        ck_assert_msg(close(numbers[i].got, numbers[i].expected), "seed %d, %s: %.17g, expected %.17g", seed,
+                      numbers[i].name, numbers[i].got, numbers[i].expected);
     check_paired(&got->on_comparable, &expected->on_comparable, "comparable", seed);
     check_paired(&got->quadratic, &expected->quadratic, "quadratic", seed);
 }
@@ -204,8 +55,9 @@ static void check_heldout(const bal_heldout *got, const bal_heldout *expected, i
 
 static bal_status hold_out(const trial *t, unsigned threads, size_t prediction_bytes, bal_heldout *out, bal_error *err) {
     bal_cells *counts = counts_of(t->network, t->codes, t->n_records);
-    bal_source *source = source_of(bal_network_domain(t->network),
-                                   &(fixture_table){.codes = t->codes, .n_records = t->n_records, .places = t->places, .block_records = 64});
+    bal_source *source =
+        source_of(bal_network_domain(t->network),
+                  &(fixture_table){.codes = t->codes, .n_records = t->n_records, .places = t->places, .block_records = 64});
     bal_heldout_options options = bal_heldout_options_defaults();
     options.folds = t->n_folds;
     options.seed = t->seed;
@@ -263,7 +115,7 @@ START_TEST(every_number_is_the_twins) {
         };
         for (size_t p = 0; p < sizeof priors / sizeof priors[0]; p++) {
             t.prior = priors[p];
-            bal_heldout got = held_out(&t), expected = twin(&t);
+            bal_heldout got = held_out(&t), expected = heldout_twin(&t);
             check_heldout(&got, &expected, seed);
             bal_prior_free(priors[p]);
         }
@@ -282,7 +134,7 @@ START_TEST(structural_zeros_are_impossible_for_bayes) {
         bal_cells *tables = random_tables(&d, t.network, seed % 3 ? 0.1 : 0);
         bal_prior *prior = expert_prior(tables, 6, 0, 1);
         t.prior = prior;
-        bal_heldout got = held_out(&t), expected = twin(&t);
+        bal_heldout got = held_out(&t), expected = heldout_twin(&t);
         check_heldout(&got, &expected, seed);
         if (seed % 3 == 0) ck_assert_uint_eq(got.bayes_impossible, 0);
         if (got.bayes_impossible) ck_assert(got.bayes_log_likelihood == -INFINITY);
@@ -347,7 +199,7 @@ START_TEST(the_strength_is_chosen_inside_the_training_part) {
     ck_assert_int_eq(bal_prior_settle(open, counts, &whole, NULL), BAL_OK);
     bal_prior *given = simple_prior(t.network, BAL_PRIOR_BDEU, whole.value);
     t.prior = open;
-    bal_heldout inside = held_out(&t), expected = twin(&t);
+    bal_heldout inside = held_out(&t), expected = heldout_twin(&t);
     t.prior = given;
     bal_heldout outside = held_out(&t);
     check_heldout(&inside, &expected, 0);
@@ -368,7 +220,12 @@ END_TEST
  *   A = 0 0 1 0, B = 0 1 1 2. Left out:  A: Bayes 3/5 3/5 1/5 3/5, ML 2/3 2/3 0 2/3.  B: Bayes 1/6 2/6 2/6 1/6, ML 0 1/3 1/3 0. */
 START_TEST(a_table_by_hand) {
     static int codes[] = {0, 0, 0, 1, 1, 1, 0, 2};
-    trial t = {.network = network_of("A:#2 ; B:#3"), .codes = codes, .n_records = 4, .n_folds = 4, .seed = 1, .places = {0, 1, 2, 3}};
+    trial t = {.network = network_of("A:#2 ; B:#3"),
+               .codes = codes,
+               .n_records = 4,
+               .n_folds = 4,
+               .seed = 1,
+               .places = {0, 1, 2, 3}};
     bal_prior *prior = simple_prior(t.network, BAL_PRIOR_K2, 1);
     t.prior = prior;
     bal_heldout out = held_out(&t);
@@ -393,7 +250,8 @@ END_TEST
 /* Two records, each the other's training part: in A the first is impossible, in B | A its row is without records. */
 START_TEST(impossible_goes_before_undefined) {
     static int codes[] = {0, 0, 1, 1};
-    trial t = {.network = network_of("A:#2 ; B:#2 | A"), .codes = codes, .n_records = 2, .n_folds = 2, .seed = 1, .places = {0, 1}};
+    trial t = {
+        .network = network_of("A:#2 ; B:#2 | A"), .codes = codes, .n_records = 2, .n_folds = 2, .seed = 1, .places = {0, 1}};
     bal_prior *prior = simple_prior(t.network, BAL_PRIOR_K2, 1);
     t.prior = prior;
     bal_heldout out = held_out(&t);
@@ -472,7 +330,8 @@ END_TEST
 static const struct {
     size_t folds;
     bal_status status;
-} fold_numbers[] = {{0, BAL_ERR_ARGUMENT}, {1, BAL_ERR_ARGUMENT}, {2, BAL_OK}, {1000, BAL_OK}, {65536, BAL_ERR_ARGUMENT}, {SIZE_MAX, BAL_ERR_ARGUMENT}};
+} fold_numbers[] = {{0, BAL_ERR_ARGUMENT}, {1, BAL_ERR_ARGUMENT},     {2, BAL_OK},
+                    {1000, BAL_OK},        {65536, BAL_ERR_ARGUMENT}, {SIZE_MAX, BAL_ERR_ARGUMENT}};
 
 START_TEST(folds_are_2_to_65535) {
     trial t;
@@ -508,9 +367,9 @@ END_TEST
 /* Counts of other records than the source's would make training parts that never were. */
 START_TEST(counts_of_other_records_are_refused) {
     bal_network *network = network_of("A:#2");
-    static const double others[][2] = {{2, 1}, {1, 1}, {0, 3}, {5, 5}};
+    static const double others[][2] = {{2, 1}, {1, 1}, {0, 3}, {5, 5}, {4, 0}, {3, 1}};
     bal_prior *prior = simple_prior(network, BAL_PRIOR_K2, 1);
-    for (size_t i = 0; i < 4; i++) {
+    for (size_t i = 0; i < 6; i++) {
         bal_cells *counts = cells_of(network, others[i]);
         bal_source *source = plain_source(network, (const int[]){0, 0, 0}, 3);
         bal_heldout_options options = bal_heldout_options_defaults();
@@ -523,6 +382,24 @@ START_TEST(counts_of_other_records_are_refused) {
     }
     bal_prior_free(prior);
     bal_network_free(network);
+}
+END_TEST
+
+START_TEST(records_of_other_variables_are_refused) {
+    bal_network *network = network_of("A:#2"), *other = network_of("A:#3");
+    bal_prior *prior = simple_prior(network, BAL_PRIOR_K2, 1);
+    bal_cells *counts = equal_cells(network, 1);
+    bal_source *source = plain_source(other, (const int[]){0, 2}, 2);
+    bal_heldout_options options = bal_heldout_options_defaults();
+    bal_heldout out;
+    bal_error err = {0};
+    ck_assert_int_eq(bal_heldout_folds(prior, counts, source, &options, &out, &err), BAL_ERR_ARGUMENT);
+    ck_assert_str_eq(err.code, "other-network");
+    bal_source_free(source);
+    bal_cells_free(counts);
+    bal_prior_free(prior);
+    bal_network_free(network);
+    bal_network_free(other);
 }
 END_TEST
 
@@ -568,7 +445,8 @@ START_TEST(holding_out_survives_failing_allocations) {
     bal_prior *prior = open_prior(t.network, BAL_PRIOR_BDEU, BAL_STRENGTH_BY_MARGINAL_LIKELIHOOD);
     t.prior = prior;
     bal_cells *counts = counts_of(t.network, t.codes, t.n_records);
-    bal_source *source = source_of(bal_network_domain(t.network), &(fixture_table){.codes = t.codes, .n_records = t.n_records, .places = t.places});
+    bal_source *source = source_of(bal_network_domain(t.network),
+                                   &(fixture_table){.codes = t.codes, .n_records = t.n_records, .places = t.places});
     for (unsigned threads = 1; threads <= 3; threads++)
         ck_assert_uint_ge(survive_allocations(hold_out_in_batches, &(holding){&t, counts, source, threads}), 30);
     bal_source_free(source);
@@ -596,6 +474,7 @@ static Suite *suite(void) {
     tcase_add_loop_test(c, folds_are_2_to_65535, 0, sizeof fold_numbers / sizeof fold_numbers[0]);
     tcase_add_test(c, a_hundred_million_records_are_the_most);
     tcase_add_test(c, counts_of_other_records_are_refused);
+    tcase_add_test(c, records_of_other_variables_are_refused);
     tcase_add_test(c, what_the_source_meets_ends_it);
     tcase_add_test(c, holding_out_survives_failing_allocations);
     suite_add_tcase(s, c);

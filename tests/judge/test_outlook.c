@@ -50,7 +50,8 @@ END_TEST
 /* A structural zero is impossible for Bayes whatever was counted there; what was counted there is kept out of its row. */
 START_TEST(a_structural_zero_is_impossible) {
     bal_network *network = network_of("A:#3");
-    bal_cells *tables = cells_of(network, (const double[]){0.5, 0, 0.5}), *training = cells_of(network, (const double[]){3, 7, 1});
+    bal_cells *tables = cells_of(network, (const double[]){0.5, 0, 0.5}),
+              *training = cells_of(network, (const double[]){3, 7, 1});
     bal_prior *prior = expert_prior(tables, 4, 0, 1);
     bali_outlook cells[3];
     bal_strength strength;

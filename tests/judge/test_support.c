@@ -32,7 +32,8 @@ static shares slow_shares(const bal_network *network, const int *codes, size_t n
         bool row = false, cell = false;
         for (size_t v = 0; v < n; v++) {
             if (cell_of(network, v, codes + i * n) == BAL_NONE) continue;
-            bool in_row = company(network, v, codes, n_records, i, true) == 1, in_cell = company(network, v, codes, n_records, i, false) == 1;
+            bool in_row = company(network, v, codes, n_records, i, true) == 1,
+                 in_cell = company(network, v, codes, n_records, i, false) == 1;
             complete[v]++;
             s.rows[v] += in_row;
             s.cells[v] += in_cell;
@@ -68,12 +69,15 @@ START_TEST(shares_are_those_of_the_definition) {
         int *codes = random_codes(&d, tables, n, sizes[_i].missing);
         bal_cells *counts = counts_of(network, codes, n);
         bal_source *source =
-            source_of(bal_network_domain(network), &(fixture_table){.codes = codes, .n_records = n, .block_records = sizes[_i].block_records});
+            source_of(bal_network_domain(network),
+                      &(fixture_table){.codes = codes, .n_records = n, .block_records = sizes[_i].block_records});
         shares expected = slow_shares(network, codes, n), got = {0};
         ck_assert_int_eq(bal_support_measure(counts, source, &got.all, got.rows, got.cells, NULL), BAL_OK);
-        ck_assert_msg(same(got.all.row_share, expected.all.row_share) && same(got.all.cell_share, expected.all.cell_share), "seed %d", seed);
+        ck_assert_msg(same(got.all.row_share, expected.all.row_share) && same(got.all.cell_share, expected.all.cell_share),
+                      "seed %d", seed);
         for (size_t v = 0; v < MOST_VARIABLES; v++)
-            ck_assert_msg(same(got.rows[v], expected.rows[v]) && same(got.cells[v], expected.cells[v]), "seed %d, variable %zu", seed, v);
+            ck_assert_msg(same(got.rows[v], expected.rows[v]) && same(got.cells[v], expected.cells[v]),
+                          "seed %d, variable %zu", seed, v);
         ck_assert(!(got.all.row_share > got.all.cell_share)); /* who is alone in a row is alone in a cell */
         bal_source_free(source);
         free(codes);
@@ -102,12 +106,28 @@ START_TEST(what_the_source_meets_ends_it) {
     bal_network *network = network_of("A:#3");
     const int codes[] = {0, 1, 2};
     bal_cells *counts = counts_of(network, codes, 3);
-    bal_source *source = source_of(bal_network_domain(network), &(fixture_table){.codes = codes, .n_records = 3, .block_records = 1, .fail_at = 2});
+    bal_source *source = source_of(bal_network_domain(network),
+                                   &(fixture_table){.codes = codes, .n_records = 3, .block_records = 1, .fail_at = 2});
     bal_support all = {7, 7};
     ck_assert_int_eq(bal_support_measure(counts, source, &all, NULL, NULL, NULL), BAL_ERR_IO);
     bal_source_free(source);
     bal_cells_free(counts);
     bal_network_free(network);
+}
+END_TEST
+
+START_TEST(records_of_other_variables_are_refused) {
+    bal_network *network = network_of("A:#2"), *other = network_of("A:#3");
+    bal_cells *counts = equal_cells(network, 1);
+    bal_source *source = plain_source(other, (const int[]){0, 2}, 2);
+    bal_support all;
+    bal_error err = {0};
+    ck_assert_int_eq(bal_support_measure(counts, source, &all, NULL, NULL, &err), BAL_ERR_ARGUMENT);
+    ck_assert_str_eq(err.code, "other-network");
+    bal_source_free(source);
+    bal_cells_free(counts);
+    bal_network_free(network);
+    bal_network_free(other);
 }
 END_TEST
 
@@ -140,6 +160,7 @@ static Suite *suite(void) {
     tcase_add_loop_test(c, shares_are_those_of_the_definition, 0, sizeof sizes / sizeof sizes[0]);
     tcase_add_test(c, counts_alone_give_the_families_shares);
     tcase_add_test(c, what_the_source_meets_ends_it);
+    tcase_add_test(c, records_of_other_variables_are_refused);
     tcase_add_test(c, measuring_survives_failing_allocations);
     suite_add_tcase(s, c);
     return s;

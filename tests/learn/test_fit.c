@@ -127,7 +127,7 @@ START_TEST(other_priors_are_fits_of_their_own) {
         ck_assert_int_eq(bal_other_priors(c.network, c.counts, used, &options, others, &n, NULL), BAL_OK);
         ck_assert_uint_eq(n, 3);
         for (size_t i = 0; i < n; i++) {
-            bal_prior_kind kind = i < used ? i : i + 1;
+            bal_prior_kind kind = (bal_prior_kind)(i < used ? i : i + 1);
             ck_assert_int_eq(others[i].kind, kind);
             bal_prior *prior = kind == BAL_PRIOR_EXPERT ? prior_of(c.network, &options)
                                : kind == BAL_PRIOR_BDEU ? open_prior(c.network, kind, BAL_STRENGTH_BY_MARGINAL_LIKELIHOOD)
@@ -159,7 +159,8 @@ START_TEST(an_expert_who_cannot_serve_is_left_out) {
 
     bal_cells *zeros = equal_cells(c.network, 0);
     for (size_t v = 0; v < bal_network_variables(c.network); v++)
-        for (size_t row = 0; row < bal_network_rows(c.network, v); row++) bal_cells_edit(zeros, v)[row * bal_network_outcomes(c.network, v)] = 1;
+        for (size_t row = 0; row < bal_network_rows(c.network, v); row++)
+            bal_cells_edit(zeros, v)[row * bal_network_outcomes(c.network, v)] = 1;
     ck_assert_int_eq(bal_document_set_cells(c.expert, BAL_CARRIED_TABLES, zeros, NULL), BAL_OK);
     options = expert_options(&c, 9);
     ck_assert_int_eq(bal_other_priors(c.network, c.counts, BAL_PRIOR_BDEU, &options, others, &n, &err), BAL_OK);

@@ -33,8 +33,8 @@ START_TEST(cells_are_those_of_the_slow_way) {
         bal_network *network = random_network(&d, 6, 1, cases[_i].most_outcomes, cases[_i].most_outcomes > 100 ? 1 : 3);
         bal_cells *tables = random_tables(&d, network, 0);
         int *codes = random_codes(&d, tables, RECORDS, cases[_i].missing);
-        bal_source *source =
-            source_of(bal_network_domain(network), &(fixture_table){.codes = codes, .n_records = RECORDS, .narrow = cases[_i].narrow});
+        bal_source *source = source_of(bal_network_domain(network),
+                                       &(fixture_table){.codes = codes, .n_records = RECORDS, .narrow = cases[_i].narrow});
         bal_block block;
         ck_assert_int_eq(bal_source_next(source, &block, NULL), BAL_OK);
         ck_assert_uint_eq(block.n_records, RECORDS);

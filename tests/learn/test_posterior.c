@@ -43,11 +43,13 @@ START_TEST(a_row_of_nothing_at_all_is_uniform) {
 }
 END_TEST
 
-/* Laplace 1814, the rule of succession: after 1,826,213 sunrises the odds of one more are 1,826,214 to 1 (recalled from memory). */
+/* Laplace 1814, the rule of succession: after 1,826,213 sunrises the odds of one more are 1,826,214 to 1 (recalled from
+ * memory). */
 START_TEST(laplaces_rule_of_succession) {
     bal_network *network = network_of("Sun:rises,stays");
     bal_prior *k2 = simple_prior(network, BAL_PRIOR_K2, 1);
-    bal_cells *alpha = pseudo_counts_of(k2, network, 1), *counts = cells_of(network, (const double[]){1826213, 0}), *mean = mean_of(alpha, counts);
+    bal_cells *alpha = pseudo_counts_of(k2, network, 1), *counts = cells_of(network, (const double[]){1826213, 0}),
+              *mean = mean_of(alpha, counts);
     ck_assert(near(bali_cells_values(mean)[0] / bali_cells_values(mean)[1], 1826214, 4 * DBL_EPSILON));
     bal_cells_free(alpha);
     bal_cells_free(counts);
@@ -57,12 +59,13 @@ START_TEST(laplaces_rule_of_succession) {
 }
 END_TEST
 
-/* Cooper & Herskovits 1992, ten cases: of five with x1 present four have x2 present, so that under K2 P(x2 = present | x1 = present) =
- * (4 + 1)/(5 + 2) (the worked substitution is recalled from memory). */
+/* Cooper & Herskovits 1992, ten cases: of five with x1 present four have x2 present, so that under K2 P(x2 = present |
+ * x1 = present) = (4 + 1)/(5 + 2) (the worked substitution is recalled from memory). */
 START_TEST(cooper_and_herskovits_expectation) {
     bal_network *network = network_of("x2:absent,present");
     bal_prior *k2 = simple_prior(network, BAL_PRIOR_K2, 1);
-    bal_cells *alpha = pseudo_counts_of(k2, network, 1), *counts = cells_of(network, (const double[]){1, 4}), *mean = mean_of(alpha, counts);
+    bal_cells *alpha = pseudo_counts_of(k2, network, 1), *counts = cells_of(network, (const double[]){1, 4}),
+              *mean = mean_of(alpha, counts);
     ck_assert_double_eq(bali_cells_values(mean)[1], 5.0 / 7);
     bal_cells_free(alpha);
     bal_cells_free(counts);
@@ -85,7 +88,8 @@ static void set_up(random_case *c, int seed, size_t n_records) {
     int *codes = random_codes(&d, c->tables, n_records, 0);
     c->counts = counts_of(c->network, codes, n_records);
     free(codes);
-    for (bal_prior_kind kind = BAL_PRIOR_BDEU; kind <= BAL_PRIOR_JEFFREYS; kind++) c->priors[kind] = simple_prior(c->network, kind, 3);
+    for (bal_prior_kind kind = BAL_PRIOR_BDEU; kind <= BAL_PRIOR_JEFFREYS; kind++)
+        c->priors[kind] = simple_prior(c->network, kind, 3);
     c->priors[BAL_PRIOR_EXPERT] = expert_prior(c->tables, 12, 0, 1);
 }
 
@@ -100,7 +104,8 @@ START_TEST(no_record_gives_the_prior) {
     random_case c;
     set_up(&c, _i, 0);
     for (size_t p = 0; p < 4; p++) {
-        bal_cells *alpha = pseudo_counts_of(c.priors[p], c.network, 3), *mean = mean_of(alpha, NULL), *same = mean_of(alpha, c.counts);
+        bal_cells *alpha = pseudo_counts_of(c.priors[p], c.network, 3), *mean = mean_of(alpha, NULL),
+                  *same = mean_of(alpha, c.counts);
         for (size_t v = 0; v < bal_network_variables(c.network); v++) {
             size_t r = bal_network_outcomes(c.network, v);
             for (size_t cell = 0; cell < bal_network_rows(c.network, v) * r; cell++) {
@@ -121,7 +126,8 @@ START_TEST(rows_sum_to_1) {
     random_case c;
     set_up(&c, _i, 80);
     for (size_t p = 0; p <= 4; p++) {
-        bal_cells *alpha = p < 4 ? pseudo_counts_of(c.priors[p], c.network, 1) : NULL, *mean = p < 4 ? mean_of(alpha, c.counts) : equal_cells(c.network, NAN);
+        bal_cells *alpha = p < 4 ? pseudo_counts_of(c.priors[p], c.network, 1) : NULL,
+                  *mean = p < 4 ? mean_of(alpha, c.counts) : equal_cells(c.network, NAN);
         if (p == 4) bal_maximum_likelihood(c.counts, mean, NULL);
         for (size_t v = 0; v < bal_network_variables(c.network); v++) {
             size_t r = bal_network_outcomes(c.network, v);
@@ -172,9 +178,10 @@ START_TEST(maximum_likelihood_is_raw_frequencies) {
 }
 END_TEST
 
-/* Quantiles that have a formula: of Beta(1, b) 1 - (1 - p)^(1/b), of Beta(a, 1) p^(1/a), of Beta(1/2, 1/2) sin^2(pi p/2) (Abramowitz &
- * Stegun 1964, 26.5), and Beta(4, 17), Beta(5, 16) of NIST/SEMATECH e-Handbook 7.2.4.2 (20 parts, 4 defective, 90 %: 0.071354 to
- * 0.401029, recalled from memory; its upper limit came from a spreadsheet and is off by 9e-7). */
+/* Quantiles that have a formula: of Beta(1, b) 1 - (1 - p)^(1/b), of Beta(a, 1) p^(1/a), of Beta(1/2, 1/2) sin^2(pi
+ * p/2) (Abramowitz & Stegun 1964, 26.5), and Beta(4, 17), Beta(5, 16) of NIST/SEMATECH e-Handbook 7.2.4.2 (20 parts, 4
+ * defective, 90 %: 0.071354 to 0.401029, recalled from memory; its upper limit came from a spreadsheet and is off by
+ * 9e-7). */
 START_TEST(intervals_are_equal_tailed) {
     double low, high, level = 0.9, p = 0.05, tolerance = 1e-10;
     ck_assert_int_eq(bal_credible_interval(1, 7, level, &low, &high, NULL), BAL_OK);
@@ -202,7 +209,9 @@ static const struct {
 START_TEST(an_interval_that_cannot_be_is_refused) {
     double low = 7, high = 8;
     bal_error err = {0};
-    ck_assert_int_eq(bal_credible_interval(bad_intervals[_i].a, bad_intervals[_i].b, bad_intervals[_i].level, &low, &high, &err), BAL_ERR_ARGUMENT);
+    ck_assert_int_eq(
+        bal_credible_interval(bad_intervals[_i].a, bad_intervals[_i].b, bad_intervals[_i].level, &low, &high, &err),
+        BAL_ERR_ARGUMENT);
     ck_assert_str_eq(err.code, bad_intervals[_i].code);
     ck_assert(low == 7 && high == 8);
     ck_assert_ptr_nonnull(bal_code_find(err.code));
@@ -224,7 +233,11 @@ START_TEST(a_row_says_what_it_rests_on) {
         double records;
         bal_basis basis;
         const char *name;
-    } rows[] = {{0, BAL_BASIS_PRIOR, "prior"}, {1, BAL_BASIS_FEW, "few"}, {4, BAL_BASIS_FEW, "few"}, {5, BAL_BASIS_DATA, "data"}, {1e9, BAL_BASIS_DATA, "data"}};
+    } rows[] = {{0, BAL_BASIS_PRIOR, "prior"},
+                {1, BAL_BASIS_FEW, "few"},
+                {4, BAL_BASIS_FEW, "few"},
+                {5, BAL_BASIS_DATA, "data"},
+                {1e9, BAL_BASIS_DATA, "data"}};
     for (size_t i = 0; i < sizeof rows / sizeof rows[0]; i++) {
         ck_assert_int_eq(bal_row_basis(rows[i].records), rows[i].basis);
         ck_assert_str_eq(bal_basis_name(rows[i].basis), rows[i].name);

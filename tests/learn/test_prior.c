@@ -13,7 +13,7 @@ static bal_cells *filled(const bal_prior *prior, const bal_network *network, dou
     return alpha;
 }
 
-/* Families of every shape, and what each prior of the table in the contract gives a cell of theirs: ESS/(q r), 1, 1/2. */
+/* Families of every shape, and what a prior gives a cell of theirs: ESS/(q r), 1 or 1/2 times the scale. */
 static const char *const shapes = "A:#2 ; B:#3 | A ; C:#4 | A,B ; D:#1 | C ; E:#5 | D";
 static const size_t q[] = {1, 2, 6, 4, 1}, r[] = {2, 3, 4, 1, 5};
 
@@ -25,7 +25,9 @@ START_TEST(pseudo_counts_are_as_defined) {
             bal_prior *prior = simple_prior(network, kind, strengths[s]);
             bal_cells *alpha = filled(prior, network, strengths[s]);
             for (size_t v = 0; v < 5; v++) {
-                double expected = kind == BAL_PRIOR_BDEU ? strengths[s] / (double)(q[v] * r[v]) : kind == BAL_PRIOR_K2 ? strengths[s] : strengths[s] / 2;
+                double expected = kind == BAL_PRIOR_BDEU ? strengths[s] / (double)(q[v] * r[v])
+                                  : kind == BAL_PRIOR_K2 ? strengths[s]
+                                                         : strengths[s] / 2;
                 for (size_t c = 0; c < q[v] * r[v]; c++) ck_assert_double_eq(bal_cells_family(alpha, v)[c], expected);
             }
             bal_cells_free(alpha);
@@ -35,8 +37,8 @@ START_TEST(pseudo_counts_are_as_defined) {
 }
 END_TEST
 
-/* Buntine 1991: the ESS is spread over a family's cells, so twice the parent configurations halve each, and every family sums to
- * the ESS. */
+/* Buntine 1991: the ESS is spread over a family's cells, so twice the parent configurations halve each, and every
+ * family sums to the ESS. */
 START_TEST(bdeu_spreads_the_ess_over_a_family) {
     bal_network *few = network_of("A:#2 ; B:#2 ; C:#3 | A"), *many = network_of("A:#2 ; B:#2 ; C:#3 | A,B");
     bal_prior *prior_few = simple_prior(few, BAL_PRIOR_BDEU, 7), *prior_many = simple_prior(many, BAL_PRIOR_BDEU, 7);
@@ -102,8 +104,9 @@ START_TEST(an_experts_row_is_worth_its_cases) {
 END_TEST
 
 typedef enum refused {
-    STRENGTH_0, STRENGTH_BELOW, STRENGTH_NAN, STRENGTH_INF, ROW_ESS_BELOW, ROW_ESS_NAN, ROW_ESS_INF, FLOOR_BELOW, FLOOR_1, FLOOR_NAN,
-    NO_EXPERT, NO_TABLES, ONE_TABLE, NO_ROW_ESS, ROW_ESS_OF_0, ROW_ESS_OF_NAN, ROW_ESS_OF_INF, FITTED, OTHER_NETWORK
+    STRENGTH_0, STRENGTH_BELOW, STRENGTH_NAN, STRENGTH_INF, ROW_ESS_BELOW, ROW_ESS_NAN, ROW_ESS_INF, FLOOR_BELOW,
+    FLOOR_1, FLOOR_NAN, NO_EXPERT, NO_TABLES, ONE_TABLE, NO_ROW_ESS, ROW_ESS_OF_0, ROW_ESS_OF_NAN, ROW_ESS_OF_INF,
+    FITTED, OTHER_NETWORK
 } refused;
 
 static const struct {
@@ -139,7 +142,8 @@ static void spoil_document(refused what, bal_document *document) {
     if (what == NO_TABLES) status = bal_document_set_cells(document, BAL_CARRIED_TABLES, NULL, NULL);
     if (what == ONE_TABLE) status = bali_document_set_tables(document, cells, (const bool[]){true, false}, NULL);
     if (what == FITTED) status = bal_document_set_cells(document, BAL_CARRIED_PSEUDO_COUNTS, cells, NULL);
-    if (what >= ROW_ESS_OF_0 && what <= ROW_ESS_OF_INF) status = bali_document_set_row_ess(document, 1, (const double[]){10, ess}, NULL);
+    if (what >= ROW_ESS_OF_0 && what <= ROW_ESS_OF_INF)
+        status = bali_document_set_row_ess(document, 1, (const double[]){10, ess}, NULL);
     ck_assert_int_eq(status, BAL_OK);
     bal_cells_free(cells);
 }
@@ -177,7 +181,8 @@ START_TEST(a_prior_says_what_it_is) {
     bal_prior_free(prior);
     bal_prior_free(NULL);
     static const char *const names[] = {"bdeu", "k2", "jeffreys", "expert"};
-    for (bal_prior_kind kind = BAL_PRIOR_BDEU; kind <= BAL_PRIOR_EXPERT; kind++) ck_assert_str_eq(bal_prior_kind_name(kind), names[kind]);
+    for (bal_prior_kind kind = BAL_PRIOR_BDEU; kind <= BAL_PRIOR_EXPERT; kind++)
+        ck_assert_str_eq(bal_prior_kind_name(kind), names[kind]);
 }
 END_TEST
 

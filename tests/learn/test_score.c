@@ -42,8 +42,9 @@ static double sequence_probability(double alpha, double n_first, double n_second
 
 /* ---- published values ---- */
 
-/* Cooper & Herskovits, Machine Learning 9 (1992) 309-347, Table 1: ten cases, and the exact K2 scores of two structures: 2.23e-9 and
- * 2.23e-10 as printed (recalled from memory), 1/449064000 and 1/4490640000 as fractions (recomputed). */
+/* Cooper & Herskovits, Machine Learning 9 (1992) 309-347, Table 1: ten cases, and the exact K2 scores of two
+ * structures: 2.23e-9 and 2.23e-10 as printed (recalled from memory), 1/449064000 and 1/4490640000 as fractions
+ * (recomputed). */
 static const int ten_cases[] = {1, 0, 0, 1, 1, 1, 0, 0, 1, 1, 1, 1, 0, 0, 0, 0, 1, 1, 1, 1, 1, 0, 0, 0, 1, 1, 1, 0, 0, 0};
 
 START_TEST(cooper_and_herskovits) {
@@ -62,8 +63,9 @@ START_TEST(cooper_and_herskovits) {
 }
 END_TEST
 
-/* Krichevsky & Trofimov, IEEE Trans. Inf. Theory 27 (1981) 199-207, as tabled by Willems, Shtarkov & Tjalkens, ibid. 41 (1995) 653-664: the
- * probability of a sequence with these counts under Jeffreys' prior (recalled from memory; exact fractions). */
+/* Krichevsky & Trofimov, IEEE Trans. Inf. Theory 27 (1981) 199-207, as tabled by Willems, Shtarkov & Tjalkens, ibid. 41
+ * (1995) 653-664: the probability of a sequence with these counts under Jeffreys' prior (recalled from memory; exact
+ * fractions). */
 static const struct {
     double zeros, ones, above, below;
 } krichevsky_trofimov[] = {
@@ -79,8 +81,9 @@ START_TEST(krichevsky_and_trofimov) {
 }
 END_TEST
 
-/* MacKay, Information Theory, Inference, and Learning Algorithms (2003), section 3.3, Table 3.5: the bent coin, a uniform prior against
- * p = 1/6; the ratios as printed (recalled from memory; the fourth is printed as .356, exactly it is .35547). */
+/* MacKay, Information Theory, Inference, and Learning Algorithms (2003), section 3.3, Table 3.5: the bent coin, a
+ * uniform prior against p = 1/6; the ratios as printed (recalled from memory; the fourth is printed as .356, exactly it
+ * is .35547). */
 static const struct {
     double n_a, n_b, ratio, half_unit;
 } bent_coin[] = {{5, 1, 222.2, 0.05},    {3, 3, 2.67, 0.005},   {2, 4, 0.71, 0.005}, {1, 5, 0.356, 0.0006},
@@ -93,8 +96,8 @@ START_TEST(mackays_bent_coin) {
 }
 END_TEST
 
-/* MacKay (2003), exercise 3.15: 140 heads in 250 spins, Beta(a, a) against p = 1/2; as printed (recalled from memory), and recomputed with
- * 50 digits (Python's mpmath). */
+/* MacKay (2003), exercise 3.15: 140 heads in 250 spins, Beta(a, a) against p = 1/2; as printed (recalled from memory),
+ * and recomputed with 50 digits (Python's mpmath). */
 static const struct {
     double alpha, printed, half_unit, exact;
 } euro[] = {{0.37, 0.25, 0.005, 0.24771964733648}, {1, 0.48, 0.005, 0.47672335916076},  {2.7, 0.82, 0.005, 0.81848730807694},
@@ -174,7 +177,8 @@ static double log_prediction(const bal_cells *alpha, const bal_cells *counts, si
     return log((bal_cells_family(alpha, v)[cell] + bal_cells_family(counts, v)[cell]) / total);
 }
 
-/* Dawid 1984: the log-likelihoods of records predicted one after another, in whatever order, sum up to the log marginal likelihood. */
+/* Dawid 1984: the log-likelihoods of records predicted one after another, in whatever order, sum up to the log marginal
+ * likelihood. */
 START_TEST(one_step_predictions_multiply_to_the_marginal_likelihood) {
     random_case c;
     set_up(&c, _i, 120);
@@ -203,7 +207,8 @@ START_TEST(leaving_one_out_is_what_brute_force_gives) {
     set_up(&c, _i, 120);
     double sum = 0;
     for (size_t i = 0; i < c.n_records; i++) {
-        bal_cells *others = counts_of(c.network, c.codes, i), *behind = counts_of(c.network, c.codes + (i + 1) * c.n, c.n_records - i - 1);
+        bal_cells *others = counts_of(c.network, c.codes, i),
+                  *behind = counts_of(c.network, c.codes + (i + 1) * c.n, c.n_records - i - 1);
         bali_cells_add(others, behind);
         for (size_t v = 0; v < c.n; v++) sum += log_prediction(c.alpha, others, v, cell_of(c.network, v, c.codes + i * c.n));
         bal_cells_free(others);
@@ -233,7 +238,8 @@ END_TEST
 
 /* Heckerman, Geiger & Chickering 1995: structures that say the same score the same under BDeu; K2 does not promise that. */
 START_TEST(equivalent_structures_score_the_same_under_bdeu) {
-    static const char *const chains[] = {"A:#2 ; B:#3 | A ; C:#4 | B", "A:#2 | B ; B:#3 ; C:#4 | B", "A:#2 | B ; B:#3 | C ; C:#4"};
+    static const char *const chains[] = {"A:#2 ; B:#3 | A ; C:#4 | B", "A:#2 | B ; B:#3 ; C:#4 | B",
+                                         "A:#2 | B ; B:#3 | C ; C:#4"};
     dice d = dice_of(_i);
     bal_network *first = network_of(chains[0]);
     bal_cells *tables = random_tables(&d, first, 0);
@@ -263,7 +269,8 @@ START_TEST(the_order_of_variables_and_outcomes_does_not_matter) {
     bal_network *reversed = reversed_network(c.network);
     int *codes = reversed_codes(c.network, c.codes, c.n_records);
     bal_cells *counts = counts_of(reversed, codes, c.n_records);
-    bal_prior *prior = simple_prior(c.network, BAL_PRIOR_BDEU, 2.5), *prior_reversed = simple_prior(reversed, BAL_PRIOR_BDEU, 2.5);
+    bal_prior *prior = simple_prior(c.network, BAL_PRIOR_BDEU, 2.5),
+              *prior_reversed = simple_prior(reversed, BAL_PRIOR_BDEU, 2.5);
     bal_cells *alpha = equal_cells(c.network, 0), *alpha_reversed = equal_cells(reversed, 0);
     bal_prior_fill(prior, 2.5, alpha);
     bal_prior_fill(prior_reversed, 2.5, alpha_reversed);

@@ -24,7 +24,8 @@ static double score_at(const bal_prior *prior, const bal_cells *counts, bal_cell
     bal_prior_fill(prior, strength, alpha);
     for (size_t v = 0; v < bal_network_variables(bal_cells_network(counts)); v++) {
         double score;
-        bal_status status = leave_one_out ? bal_leave_one_out(alpha, counts, v, &score, &err) : bal_log_marginal_likelihood(alpha, counts, v, &score, &err);
+        bal_status status = leave_one_out ? bal_leave_one_out(alpha, counts, v, &score, &err)
+                                          : bal_log_marginal_likelihood(alpha, counts, v, &score, &err);
         if (status != BAL_OK) ck_abort_msg("%s", err.message); /* an assertion each time would be slow */
         sum += score;
     }
@@ -46,16 +47,18 @@ static double dense_best(const bal_prior *prior, const bal_cells *counts, int n,
     return best;
 }
 
-/* A value is the brute force's best, rounded: at most half a unit of its third digit and one of the brute force's steps away, and
- * then hardly worse. */
+/* A value is the brute force's best, rounded: at most half a unit of its third digit and one of the brute force's steps
+ * away, and then hardly worse. */
 static void check_choice(const bal_prior *prior, const bal_cells *counts, int n, int seed) {
     double best_score, best = dense_best(prior, counts, n, &best_score), step = log(1e6) / (n - 1);
     bal_strength strength = settled(prior, counts);
     bal_cells *alpha = equal_cells(bal_cells_network(counts), 0);
     double score = score_at(prior, counts, alpha, strength.value);
     ck_assert_msg(strength.chosen, "seed %d", seed);
-    ck_assert_msg(fabs(log(strength.value / best)) <= 0.0051 + step, "seed %d: %.17g, and by brute force %.17g", seed, strength.value, best);
-    ck_assert_msg(score >= best_score - 1e-4 * fmax(1, fabs(best_score)), "seed %d: score %.17g, by brute force %.17g", seed, score, best_score);
+    ck_assert_msg(fabs(log(strength.value / best)) <= 0.0051 + step, "seed %d: %.17g, and by brute force %.17g", seed,
+                  strength.value, best);
+    ck_assert_msg(score >= best_score - 1e-4 * fmax(1, fabs(best_score)), "seed %d: score %.17g, by brute force %.17g", seed,
+                  score, best_score);
     ck_assert_int_eq(strength.at_end, best < 0.01 * exp(step / 2) ? -1 : best > 10000 * exp(-step / 2) ? 1 : 0);
     bal_cells_free(alpha);
 }
@@ -224,9 +227,10 @@ START_TEST(the_printed_value_reproduces_the_pseudo_counts) {
 }
 END_TEST
 
-/* Counts of a pair of variables times a factor. Their best ESS hardly moves with it, while the scores grow so large that their
- * last bits are worth more than an ESS is: 27.629, 26.979, 26.973, 26.973 by the marginal likelihood and 31.222, 30.552, 30.5455,
- * 30.5455 by leave-one-out, from the derivative's zero in 60-digit arithmetic (Python's mpmath). */
+/* Counts of a pair of variables times a factor. Their best ESS hardly moves with it, while the scores grow so large
+ * that their last bits are worth more than an ESS is: 27.629, 26.979, 26.973, 26.973 by the marginal likelihood and
+ * 31.222, 30.552, 30.5455, 30.5455 by leave-one-out, from the derivative's zero in 60-digit arithmetic (Python's
+ * mpmath). */
 static const struct {
     double factor, by_marginal_likelihood, by_leave_one_out;
 } large[] = {{1e2, 27.6, 31.2}, {1e4, 27, 30.6}, {1e6, 27, 30.5}, {1e7, 27, 30.5}};

@@ -29,8 +29,8 @@ static void tear_down(given *g) {
 }
 
 static bal_cells *tally(const given *g, const int *codes, size_t n_records, size_t block_records) {
-    bal_source *source =
-        source_of(bal_network_domain(g->network), &(fixture_table){.codes = codes, .n_records = n_records, .block_records = block_records});
+    bal_source *source = source_of(bal_network_domain(g->network),
+                                   &(fixture_table){.codes = codes, .n_records = n_records, .block_records = block_records});
     bal_cells *counts = NULL;
     bal_error err = {0};
     ck_assert_msg(bal_tally(g->network, source, &counts, &err) == BAL_OK, "%s", err.message);
@@ -40,7 +40,8 @@ static bal_cells *tally(const given *g, const int *codes, size_t n_records, size
 
 static bool same(const bal_cells *a, const bal_cells *b) {
     size_t n = bal_network_cells(bal_cells_network(a));
-    return n == bal_network_cells(bal_cells_network(b)) && memcmp(bali_cells_values(a), bali_cells_values(b), n * sizeof(double)) == 0;
+    return n == bal_network_cells(bal_cells_network(b)) &&
+           memcmp(bali_cells_values(a), bali_cells_values(b), n * sizeof(double)) == 0;
 }
 
 START_TEST(counts_are_those_of_the_slow_way) {
@@ -112,7 +113,8 @@ END_TEST
 START_TEST(a_tally_starts_where_the_source_stands) {
     bal_network *network = network_of("A:#2");
     const int codes[] = {0, 0, 1};
-    bal_source *source = source_of(bal_network_domain(network), &(fixture_table){.codes = codes, .n_records = 3, .block_records = 1});
+    bal_source *source =
+        source_of(bal_network_domain(network), &(fixture_table){.codes = codes, .n_records = 3, .block_records = 1});
     bal_block block;
     bal_cells *counts;
     ck_assert_int_eq(bal_source_next(source, &block, NULL), BAL_OK);
@@ -136,7 +138,8 @@ START_TEST(records_are_those_of_the_first_family) {
 END_TEST
 
 START_TEST(records_of_other_variables_are_refused) {
-    bal_network *network = network_of("A:#2 ; B:#2"), *same_domain = network_of("A:#2 ; B:#2 | A"), *other = network_of("A:#2 ; B:#3");
+    bal_network *network = network_of("A:#2 ; B:#2"), *same_domain = network_of("A:#2 ; B:#2 | A"),
+                *other = network_of("A:#2 ; B:#3");
     const int codes[] = {0, 1};
     bal_source *source = plain_source(same_domain, codes, 1), *wrong = plain_source(other, codes, 1);
     bal_cells *counts = equal_cells(network, 0), *first = counts;
@@ -159,7 +162,8 @@ START_TEST(what_the_source_meets_ends_the_tally) {
     given g;
     set_up(&g, 1, 0);
     bal_source *source =
-        source_of(bal_network_domain(g.network), &(fixture_table){.codes = g.codes, .n_records = RECORDS, .block_records = 100, .fail_at = 3});
+        source_of(bal_network_domain(g.network),
+                  &(fixture_table){.codes = g.codes, .n_records = RECORDS, .block_records = 100, .fail_at = 3});
     bal_cells *counts = (bal_cells *)source;
     bal_error err = {0};
     ck_assert_int_eq(bal_tally(g.network, source, &counts, &err), BAL_ERR_IO);

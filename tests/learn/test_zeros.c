@@ -97,7 +97,8 @@ START_TEST(places_count_the_records_that_were_dropped) {
     set_up(&g);
     const uint64_t places[] = {0, 17, 18, 19, 20};
     bal_error err = {0};
-    ck_assert_int_eq(check(&g, &(fixture_table){.codes = cases[0].codes, .n_records = 5, .places = places}, true, &err), BAL_ERR_DATA);
+    ck_assert_int_eq(check(&g, &(fixture_table){.codes = cases[0].codes, .n_records = 5, .places = places}, true, &err),
+                     BAL_ERR_DATA);
     ck_assert_uint_eq(err.record, 18);
     tear_down(&g);
 }
@@ -114,7 +115,8 @@ START_TEST(without_the_records_the_cell_is_named) {
     ck_assert_uint_eq(err.record, 0);
 
     err = (bal_error){0};
-    fixture_table broken = {.codes = cases[1].codes, .n_records = 5, .block_records = 2, .fail_at = 2}; /* before the fifth record */
+    fixture_table broken = {
+        .codes = cases[1].codes, .n_records = 5, .block_records = 2, .fail_at = 2}; /* before the fifth record */
     ck_assert_int_eq(check(&g, &broken, true, &err), BAL_ERR_DATA);
     ck_assert_str_eq(err.code, "structural-zero");
     ck_assert_uint_eq(err.record, 0);
@@ -125,7 +127,8 @@ END_TEST
 START_TEST(a_pipe_that_was_read_still_refuses) {
     given g;
     set_up(&g);
-    bal_source *pipe = source_of(bal_network_domain(g.network), &(fixture_table){.codes = cases[0].codes, .n_records = 5, .pipe = true});
+    bal_source *pipe =
+        source_of(bal_network_domain(g.network), &(fixture_table){.codes = cases[0].codes, .n_records = 5, .pipe = true});
     bal_cells *counts = counts_of(g.network, cases[0].codes, 5);
     bal_block block;
     bal_error err = {0};
@@ -135,6 +138,23 @@ START_TEST(a_pipe_that_was_read_still_refuses) {
     ck_assert_uint_eq(err.record, 0);
     bal_cells_free(counts);
     bal_source_free(pipe);
+    tear_down(&g);
+}
+END_TEST
+
+START_TEST(records_of_other_variables_name_none) {
+    given g;
+    set_up(&g);
+    bal_network *other = network_of("A:#9");
+    bal_source *source = plain_source(other, (const int[]){8, 8, 8}, 3);
+    bal_cells *counts = counts_of(g.network, cases[0].codes, 5);
+    bal_error err = {0};
+    ck_assert_int_eq(bal_prior_check(g.prior, counts, source, &err), BAL_ERR_DATA);
+    ck_assert_str_eq(err.code, "structural-zero");
+    ck_assert_uint_eq(err.record, 0);
+    bal_cells_free(counts);
+    bal_source_free(source);
+    bal_network_free(other);
     tear_down(&g);
 }
 END_TEST
@@ -197,8 +217,8 @@ START_TEST(a_refusal_says_the_whole_configuration) {
     bal_network *network = network_of("A:x,y ; B:#3 ; C:p,q | B,A");
     bal_error err = {0};
     ck_assert_int_eq(bali_refuse_zero(network, 2, (2 * 2 + 1) * 2 + 0, &err), BAL_ERR_DATA);
-    ck_assert_str_eq(err.message,
-                     "C=p given B=2, A=y is impossible under the prior, yet records have it; correct them or the table, or use --prior-floor");
+    ck_assert_str_eq(err.message, "C=p given B=2, A=y is impossible under the prior, yet records have it; correct them or "
+                                  "the table, or use --prior-floor");
     ck_assert_str_eq(err.variable, "C");
     bal_network_free(network);
 }
@@ -213,6 +233,7 @@ static Suite *suite(void) {
     tcase_add_test(c, places_count_the_records_that_were_dropped);
     tcase_add_test(c, without_the_records_the_cell_is_named);
     tcase_add_test(c, a_pipe_that_was_read_still_refuses);
+    tcase_add_test(c, records_of_other_variables_name_none);
     tcase_add_test(c, a_floor_leaves_no_structural_zero);
     tcase_add_test(c, failing_allocations_do_not_let_a_record_pass);
     tcase_add_test(c, every_cell_is_looked_at);

@@ -25,7 +25,8 @@ START_TEST(a_new_document_carries_nothing) {
     size_t n_properties;
     ck_assert_str_eq(bal_document_name(d), "");
     ck_assert_uint_eq(bal_network_variables(bal_document_network(d)), 2);
-    for (bal_carried what = BAL_CARRIED_TABLES; what <= BAL_CARRIED_PSEUDO_COUNTS; what++) ck_assert_ptr_null(bal_document_cells(d, what));
+    for (bal_carried what = BAL_CARRIED_TABLES; what <= BAL_CARRIED_PSEUDO_COUNTS; what++)
+        ck_assert_ptr_null(bal_document_cells(d, what));
     ck_assert_ptr_null(bali_document_table(d, 1));
     ck_assert_ptr_null(bal_document_row_ess(d, 1));
     (void)bali_document_properties(d, &n_properties);
@@ -44,7 +45,8 @@ START_TEST(cells_are_copied_in_and_taken_out) {
     bali_cells_all(counts)[0] = 99;
     ck_assert_double_eq(bali_cells_values(bal_document_cells(d, BAL_CARRIED_COUNTS))[0], 3);
     ck_assert_ptr_null(bal_document_cells(d, BAL_CARRIED_TABLES));
-    ck_assert_int_eq(bal_document_set_cells(d, BAL_CARRIED_COUNTS, bal_document_cells(d, BAL_CARRIED_COUNTS), NULL), BAL_OK); /* its own */
+    ck_assert_int_eq(bal_document_set_cells(d, BAL_CARRIED_COUNTS, bal_document_cells(d, BAL_CARRIED_COUNTS), NULL),
+                     BAL_OK); /* its own */
     ck_assert_double_eq(bali_cells_values(bal_document_cells(d, BAL_CARRIED_COUNTS))[7], 3);
 
     bal_error err = {0};

@@ -64,13 +64,15 @@ static const struct {
     {NULL, "a", "empty-name", "a variable has no name", ""},
     {"X", "", "empty-name", "an outcome has no name", "X"},
     {"X", NULL, "empty-name", "an outcome has no name", "X"},
-    {NAME_255 "5", "a", "long-name", "a variable \"0123456789012345678901234567890123456789...\" has 256 bytes; use at most 255", NAME_255},
+    {NAME_255 "5", "a", "long-name",
+     "a variable \"0123456789012345678901234567890123456789...\" has 256 bytes; use at most 255", NAME_255},
     {"X", NAME_255 "5", "long-name", "has 256 bytes", "X"},
-    {"Fever\x1B[31m", "a", "control-character", "a variable \"Fever\\x1B[31m\" holds the control character U+001B", "Fever\x1B[31m"},
+    {"Fever\x1B[31m", "a", "control-character", "a variable \"Fever\\x1B[31m\" holds the control character U+001B",
+     "Fever\x1B[31m"},
     {"X", "a\nb", "control-character", "an outcome \"a\\x0Ab\" holds the control character U+000A; remove it", "X"},
     {"X", "a\tb", "control-character", "U+0009", "X"},
-    {"X", "\xE2\x80\xAE" "abc", "control-character", "U+202E", "X"}, /* right-to-left override */
-    {"X", "\xC2\x85", "control-character", "U+0085", "X"},           /* next line, a C1 control */
+    {"X", "\u202Eabc", "control-character", "U+202E", "X"}, /* right-to-left override */
+    {"X", "\xC2\x85", "control-character", "U+0085", "X"}, /* next line, a C1 control */
     {"X", "caf\xE9", "bad-utf8", "an outcome is not UTF-8", "X"},
     {"X\xC0\xAF", "a", "bad-utf8", "a variable is not UTF-8", "X\xC0\xAF"}, /* overlong */
     {"X", "\xED\xA0\x80", "bad-utf8", "not UTF-8", "X"},                    /* surrogate */

@@ -79,10 +79,11 @@ static bool reads_medium(bal_source *source, const given *g) {
 static const struct {
     const char *network;
     bool weighted, narrow, places;
+    size_t block_records; /* 0 = BLOCK */
 } shapes[] = {
-    {"A:#3 ; B:#4 | A ; C:#2", false, false, false}, {"A:#3 ; B:#4 | A ; C:#300", false, false, false},
-    {"A:#3 ; B:#4 ; C:#2", true, false, true},       {"A:#3 ; B:#4 ; C:#300", true, true, true},
-    {"A:#3 ; B:#4 ; C:#2", false, true, true},       {"A:#3 ; B:#4 ; C:#2", true, false, false},
+    {"A:#3 ; B:#4 | A ; C:#2", false, false, false, 0}, {"A:#3 ; B:#4 | A ; C:#300", false, false, false, 0},
+    {"A:#3 ; B:#4 ; C:#2", true, false, true, 0},       {"A:#3 ; B:#4 ; C:#300", true, true, true, 0},
+    {"A:#3 ; B:#4 ; C:#2", false, true, true, 0},       {"A:#3 ; B:#4 ; C:#2", true, false, false, 999}, /* and 1 */
 };
 
 START_TEST(later_passes_are_the_same_from_memory) {
@@ -91,6 +92,7 @@ START_TEST(later_passes_are_the_same_from_memory) {
     g.table.weighted = shapes[_i].weighted;
     g.table.narrow = shapes[_i].narrow;
     g.table.places = shapes[_i].places ? g.places : NULL;
+    if (shapes[_i].block_records > 0) g.table.block_records = shapes[_i].block_records;
     bal_source *kept = keep(&g, SIZE_MAX);
     ck_assert(reads_medium(kept, &g));
     for (int pass = 0; pass < 3; pass++) {

@@ -48,11 +48,13 @@ static const struct {
     {"Z:a,b ; A:a,b | C,Z ; B:a,b | A ; C:a,b | B", 0, "cycle", "circle: B -> C -> A -> B;", "B"},
     {"A:a,b | I ; B:a,b | A ; C:a,b | B ; D:a,b | C ; E:a,b | D ; F:a,b | E ; G:a,b | F ; H:a,b | G ; I:a,b | H", 0, "cycle",
      "circle: B -> C -> D -> E -> F -> G -> H -> I -> A -> B;", "B"},
-    {"A:a,b | J ; B:a,b | A ; C:a,b | B ; D:a,b | C ; E:a,b | D ; F:a,b | E ; G:a,b | F ; H:a,b | G ; I:a,b | H ; J:a,b | I", 0, "cycle",
-     "circle: B -> C -> D -> E -> F -> G -> H -> I -> ... (10 arcs) -> A -> B;", "B"},
+    {"A:a,b | J ; B:a,b | A ; C:a,b | B ; D:a,b | C ; E:a,b | D ; F:a,b | E ; G:a,b | F ; H:a,b | G ; I:a,b | H ; J:a,b | I",
+     0, "cycle", "circle: B -> C -> D -> E -> F -> G -> H -> I -> ... (10 arcs) -> A -> B;", "B"},
     {"A:a,b ; B:a,b | A,A", 0, "duplicate-parent", "B has the parent A twice; remove one", "B"},
-    {"A:a,b ; B:a,b | A", 5, "too-many-cells", "the table of B with its 1 parents takes the network over 5 cells; "
-     "use fewer parents or outcomes, or raise --max-cells", "B"},
+    {"A:a,b ; B:a,b | A", 5, "too-many-cells",
+     "the table of B with its 1 parents takes the network over 5 cells; "
+     "use fewer parents or outcomes, or raise --max-cells",
+     "B"},
     {"A:a,b,c,d,e,f", 5, "too-many-cells", "of A with its 0 parents", "A"},
     /* 2048 x 2048 = 2^22 cells stand at the limit; one variable more goes over it. */
     {"A:#2048 ; B:#2048 | A", 0, "too-many-cells", "of B with its 1 parents takes the network over 4194304 cells", "B"},
@@ -88,7 +90,8 @@ START_TEST(a_cycle_of_long_names_is_told_briefly) {
 END_TEST
 
 /* A child of n_outcomes with n_parents of parent_outcomes each. */
-static bal_status wide_family(size_t n_parents, size_t parent_outcomes, size_t n_outcomes, size_t max_cells, bal_network **out, bal_error *err) {
+static bal_status wide_family(size_t n_parents, size_t parent_outcomes, size_t n_outcomes, size_t max_cells,
+                              bal_network **out, bal_error *err) {
     char text[4096];
     size_t at = (size_t)snprintf(text, sizeof text, "Child:#%zu |", n_outcomes);
     for (size_t p = 0; p < n_parents; p++) at += (size_t)snprintf(text + at, sizeof text - at, "%sP%zu", p ? "," : "", p);
@@ -113,7 +116,8 @@ START_TEST(a_family_that_overflows_is_refused) {
     for (size_t i = 0; i < sizeof limits / sizeof limits[0]; i++) {
         bal_network *network;
         bal_error err = {0};
-        bal_status status = wide_family(too_wide[_i].n_parents, too_wide[_i].parent_outcomes, too_wide[_i].n_outcomes, limits[i], &network, &err);
+        bal_status status = wide_family(too_wide[_i].n_parents, too_wide[_i].parent_outcomes, too_wide[_i].n_outcomes,
+                                        limits[i], &network, &err);
         ck_assert_int_eq(status, BAL_ERR_DATA);
         ck_assert_ptr_null(network);
         ck_assert_str_eq(err.code, "too-many-cells");
@@ -147,8 +151,9 @@ START_TEST(a_parent_out_of_range_is_refused) {
 END_TEST
 
 START_TEST(networks_are_equal_when_domain_and_parents_are) {
-    static const char *const texts[] = {"A:a,b ; B:a,b | A ; C:a,b | A,B", "A:a,b ; B:a,b | A ; C:a,b | B,A", "A:a,b ; B:a,b | A ; C:a,b | A",
-                                        "A:a,b ; B:a,b | A ; C:a,b | B",   "A:a,c ; B:a,b | A ; C:a,b | A,B", "A:a,b ; B:a,b ; C:a,b | A,B"};
+    static const char *const texts[] = {"A:a,b ; B:a,b | A ; C:a,b | A,B", "A:a,b ; B:a,b | A ; C:a,b | B,A",
+                                        "A:a,b ; B:a,b | A ; C:a,b | A",   "A:a,b ; B:a,b | A ; C:a,b | B",
+                                        "A:a,c ; B:a,b | A ; C:a,b | A,B", "A:a,b ; B:a,b ; C:a,b | A,B"};
     enum { N = sizeof texts / sizeof texts[0] };
     bal_network *networks[N], *again = network_of(texts[0]);
     for (size_t i = 0; i < N; i++) networks[i] = network_of(texts[i]);

@@ -38,7 +38,8 @@ END_TEST
 START_TEST(a_full_memo_gives_way) {
     bali_intervals intervals = {.level = 0.95};
     for (size_t pass = 0; pass < 2; pass++)
-        for (size_t i = 0; i < BALI_INTERVAL_SLOTS; i++) check_row(&intervals, (const double[]){(double)(i % 50) + 0.5, (double)(i / 50) + 0.25}, 2);
+        for (size_t i = 0; i < BALI_INTERVAL_SLOTS; i++)
+            check_row(&intervals, (const double[]){(double)(i % 50) + 0.5, (double)(i / 50) + 0.25}, 2);
 }
 END_TEST
 
@@ -99,7 +100,8 @@ START_TEST(a_bad_level_is_refused) {
     bal_error err = {0};
     ck_assert_int_eq(bali_intervals_row(&intervals, (const double[]){2, 3}, 2, low, high, &err), BAL_ERR_ARGUMENT);
     ck_assert_str_eq(err.code, "bad-level");
-    ck_assert_int_eq(bali_intervals_row(&intervals, (const double[]){2, 3}, 2, low, high, NULL), BAL_ERR_ARGUMENT); /* not remembered */
+    ck_assert_int_eq(bali_intervals_row(&intervals, (const double[]){2, 3}, 2, low, high, NULL),
+                     BAL_ERR_ARGUMENT); /* not remembered */
 }
 END_TEST
 

@@ -84,8 +84,8 @@ static bal_family_spec draft_family(const drafted_variable *variables, size_t n,
     return (bal_family_spec){list, n_parents};
 }
 
-static bal_status create(const drafted_variable *variables, const bal_family_spec *families, size_t n, size_t max_cells, bal_network **out,
-                         bal_error *err) {
+static bal_status create(const drafted_variable *variables, const bal_family_spec *families, size_t n, size_t max_cells,
+                         bal_network **out, bal_error *err) {
     bal_domain *domain = NULL;
     bal_variable_spec *specs = make(n, sizeof *specs);
     for (size_t v = 0; v < n; v++) specs[v] = variables[v].spec;
@@ -155,7 +155,8 @@ bal_cells *cells_of(const bal_network *network, const double *values) {
 size_t cell_of(const bal_network *network, size_t variable, const int *record) {
     size_t n_parents, outcomes[64];
     const size_t *parents = bal_network_parents(network, variable, &n_parents);
-    if (n_parents > 64) ck_abort_msg("%zu parents are too many for a fixture", n_parents); /* an assertion each time would be slow */
+    if (n_parents > 64)
+        ck_abort_msg("%zu parents are too many for a fixture", n_parents); /* an assertion each time would be slow */
     for (size_t p = 0; p < n_parents; p++) {
         if (record[parents[p]] < 0) return BAL_NONE;
         outcomes[p] = (size_t)record[parents[p]];
@@ -206,7 +207,8 @@ static bal_status fixture_next(bal_source *source, bal_block *block, bal_error *
     all_blocks++;
     if (++s->n_blocks == s->table.fail_at) return bal_error_set(err, BAL_ERR_IO, "cannot-read", "a fixture that cannot be read");
     for (size_t t = 0; t < n; t++) {
-        for (size_t v = s->table.narrow; v < s->n_variables; v++) put_code(s, v, t, s->table.codes[(s->at + t) * s->n_variables + v]);
+        for (size_t v = s->table.narrow; v < s->n_variables; v++)
+            put_code(s, v, t, s->table.codes[(s->at + t) * s->n_variables + v]);
         s->weights[t] = (double)(s->at + t + 1);
     }
     *block = (bal_block){.n_records = n,
@@ -286,7 +288,8 @@ bal_prior *expert_prior(const bal_cells *tables, double row_ess, double floor, d
     bal_error err = {0};
     must(bal_document_create(network, "expert", &document, &err), &err);
     must(bal_document_set_cells(document, BAL_CARRIED_TABLES, tables, &err), &err);
-    bal_prior_options options = {.kind = BAL_PRIOR_EXPERT, .strength = strength, .expert = document, .row_ess = row_ess, .floor = floor};
+    bal_prior_options options = {
+        .kind = BAL_PRIOR_EXPERT, .strength = strength, .expert = document, .row_ess = row_ess, .floor = floor};
     bal_prior *prior = prior_of(network, &options);
     bal_document_free(document);
     return prior;
@@ -323,7 +326,8 @@ bal_network *random_network(dice *d, size_t n, size_t least_outcomes, size_t mos
     size_t at = 0;
     shuffle(d, rank, n);
     for (size_t v = 0; v < n; v++) {
-        size_t outcomes = least_outcomes + roll(d, most_outcomes - least_outcomes + 1), n_parents = roll(d, most_parents + 1), put = 0;
+        size_t outcomes = least_outcomes + roll(d, most_outcomes - least_outcomes + 1),
+               n_parents = roll(d, most_parents + 1), put = 0;
         at += (size_t)snprintf(text + at, sizeof text - at, "%sV%zu:#%zu |", v ? ";" : "", v, outcomes);
         shuffle(d, pool, n);
         for (size_t i = 0; i < n && put < n_parents; i++)
@@ -338,7 +342,8 @@ static void put_reversed_variable(bali_text *text, const bal_network *network, s
     const size_t *parents = bal_network_parents(network, v, &n_parents);
     bali_text_printf(text, "%s:", bal_domain_name(domain, v));
     for (size_t k = r; k-- > 0;) bali_text_printf(text, "%s%s", k + 1 < r ? "," : "", bal_domain_outcome(domain, v, k));
-    for (size_t p = n_parents; p-- > 0;) bali_text_printf(text, "%s%s", p + 1 < n_parents ? "," : "|", bal_domain_name(domain, parents[p]));
+    for (size_t p = n_parents; p-- > 0;)
+        bali_text_printf(text, "%s%s", p + 1 < n_parents ? "," : "|", bal_domain_name(domain, parents[p]));
 }
 
 bal_network *reversed_network(const bal_network *network) {
