@@ -14,7 +14,7 @@ typedef struct bal_fit {
     bal_cells *counts;        /* copies of what went in */
     bal_cells *pseudo_counts; /* at the settled strength */
     bal_cells *mean;          /* posterior means */
-    bal_scores scores;        /* over all families; leave-one-out at the settled prior */
+    bal_scores scores;        /* over all families; leave-one-out at the settled prior, NaN when some count is not whole */
     double *family_scores;    /* log marginal likelihood of each family, nats */
     double records;           /* of the first family */
 } bal_fit;
@@ -22,7 +22,8 @@ typedef struct bal_fit {
 /**
  * Settles the prior on the counts and computes the posterior means and scores.
  *
- * Fails:  DATA "structural-zero" when a count falls where the prior has none; NUMERIC; MEMORY.
+ * Fails:  DATA "structural-zero" when a count falls where the prior has none, and "fractional-weight" as bal_prior_settle does;
+ *         NUMERIC; MEMORY.
  * Cost:   O(cells), and what settling the prior costs.
  */
 BAL_API BAL_MUST_CHECK bal_status bal_fit_create(const bal_prior *prior, const bal_cells *counts, bal_fit **out, bal_error *err);
@@ -32,13 +33,13 @@ BAL_API void bal_fit_free(bal_fit *fit);
 typedef struct bal_other_prior {
     bal_prior_kind kind;
     double strength;      /* the ESS of BDEU, chosen by the marginal likelihood; 1 for the others */
-    double leave_one_out; /* nats, all records */
+    double leave_one_out; /* nats, all records; NaN when some count is not whole */
 } bal_other_prior;
 
-#define BAL_PRIOR_KINDS 4
+#define BAL_PRIOR_KINDS 5
 
 /**
- * Leave-one-out of every prior but one, on the same counts. EXPERT is among them when a document is given whose tables and row ESS
+ * Leave-one-out of every prior but one and CARRIED, on the same counts. EXPERT is among them when a document is given whose tables and row ESS
  * can serve.
  *
  * used    the kind to leave out

@@ -94,9 +94,30 @@ BAL_API void bal_text_free(char *text);
 
 /* What a missing cell means. */
 typedef enum bal_missing {
-    BAL_MISSING_STOP, /* refuse the table, saying how many are missing in each column and where the first is */
-    BAL_MISSING_DROP  /* leave out records in which a wanted cell is missing */
+    BAL_MISSING_STOP,  /* refuse the table, saying how many are missing in each column and where the first is */
+    BAL_MISSING_DROP,  /* leave out records in which a wanted cell is missing */
+    BAL_MISSING_FAMILY /* give them with their missing cells, to be counted in every family they are complete for */
 } bal_missing;
+
+/* How a table spells outcomes: a codebook's lines (variable, outcome, code). Read-only once read. */
+typedef struct bal_codebook bal_codebook;
+
+/**
+ * Reads a codebook: a CSV with the columns variable, outcome and code, one line a spelling; an empty code is the empty cell.
+ *
+ * facts  may be NULL
+ *
+ * Fails:  IO, SYNTAX and MEMORY as a table does; DATA for an unknown variable or outcome, or a code that stands for two outcomes
+ *         of one variable, with file, line and column.
+ */
+BAL_API BAL_MUST_CHECK bal_status bal_codebook_read(const bal_domain *domain, const char *path, const bal_notices *notices,
+                                                    bal_codebook **out, bal_file_facts *facts, bal_error *err);
+BAL_API void bal_codebook_free(bal_codebook *codebook);
+
+/* The labels of a fold column, numbered by first appearance, over all tables that share the object. */
+typedef struct bal_groups bal_groups;
+BAL_API BAL_MUST_CHECK bal_status bal_groups_create(bal_groups **out, bal_error *err);
+BAL_API void bal_groups_free(bal_groups *groups);
 
 /** How a table is read. Start from bal_table_options_defaults(). */
 typedef struct bal_table_options {
@@ -105,6 +126,11 @@ typedef struct bal_table_options {
     bool allow_absent;          /* a variable without a column is missing everywhere, instead of a refusal */
     bool redact;                /* messages show no cell's text */
     bal_missing missing;
+    const char *weight;         /* the column of case weights; NULL = every weight is 1 */
+    const char *fold_column;    /* the column whose labels are blocks' groups; NULL = none */
+    bal_groups *groups;         /* where they are numbered; needed with fold_column; outlives the source */
+    const bal_codebook *codebook; /* further spellings of outcomes, or NULL; outlives the source */
+    const bal_document *document; /* whose ballast.column and ballast.cuts are used, or NULL; outlives the source */
     const char *const *missing_labels; /* further spellings of a missing cell */
     size_t n_missing_labels;
     const bool *wanted;         /* one a variable of the domain: which columns are wanted; NULL = all */
@@ -113,8 +139,8 @@ typedef struct bal_table_options {
 BAL_API bal_table_options bal_table_options_defaults(void);
 
 /**
- * Opens a table (CSV by RFC 4180, with a header) as a source of blocks over a domain. Nothing but the
- * header is read yet.
+ * Opens a table (CSV by RFC 4180, with a header; gzip by its first bytes) as a source of blocks over a domain.
+ * Nothing but the header is read yet.
  *
  * path   "-" is standard input
  *

@@ -9,9 +9,20 @@
 extern "C" {
 #endif
 
-/** How records are held out. Start from bal_heldout_options_defaults(): ten folds, seed 1. */
+/* Which records are held out. */
+typedef enum bal_heldout_method {
+    BAL_HELDOUT_FOLDS,   /* K parts, each predicted by a fit to the others */
+    BAL_HELDOUT_GROUPS,  /* the same, one part a label of the fold column: a patient, a site, a period */
+    BAL_HELDOUT_HOLDOUT, /* one random part, predicted by a fit to the rest */
+    BAL_HELDOUT_TEST     /* a table of its own, predicted by a fit to all counts */
+} bal_heldout_method;
+
+/** How records are held out. Start from bal_heldout_options_defaults(): ten folds, once, seed 1. */
 typedef struct bal_heldout_options {
-    size_t folds;     /* 2 to BAL_HELDOUT_MOST_FOLDS; more folds than records leave some of them empty */
+    bal_heldout_method method;
+    size_t folds;     /* FOLDS: 2 to BAL_HELDOUT_MOST_FOLDS; more folds than records leave some of them empty */
+    double fraction;  /* HOLDOUT: of the records, in (0, 1) */
+    size_t repeats;   /* FOLDS and HOLDOUT: >= 1 */
     uint64_t seed;
     unsigned threads; /* >= 1; changes no number */
     size_t prediction_bytes; /* memory for the folds' predictions, 256 MiB; changes no number */
@@ -32,15 +43,16 @@ typedef struct bal_paired {
  * otherwise undefined where a row it needs has none, otherwise comparable. Comparable records are those
  * ML has seen, so a comparison on them alone favours ML.
  *
+ * Over repeats, counts and totals are means over the repeats; a standard error is that of the records' means.
  * Means over no record are NaN.
  */
 typedef struct bal_heldout {
-    uint64_t records;            /* scored */
-    uint64_t incomplete;         /* not scored, since a cell was missing */
-    uint64_t impossible;         /* for ML */
-    uint64_t undefined;          /* for ML */
-    uint64_t comparable;
-    uint64_t bayes_impossible;   /* records in a structural zero of the prior */
+    double records;              /* scored */
+    double incomplete;           /* not scored, since a cell was missing */
+    double impossible;           /* for ML */
+    double undefined;            /* for ML */
+    double comparable;
+    double bayes_impossible;     /* records in a structural zero of the prior */
     double bayes_log_likelihood; /* nats, all records; -infinity when bayes_impossible > 0 */
     double ml_log_likelihood;    /* -infinity as soon as one record is impossible, NaN when some are undefined only */
     double prior_log_likelihood; /* the same for the prior alone, at the strength chosen in training */
@@ -48,10 +60,12 @@ typedef struct bal_heldout {
     double bayes_on_others;      /* log-likelihood per record on impossible and undefined records */
     double break_even;           /* what ML would need per record on the others to tie on all; NaN when there are none */
     bal_paired quadratic;        /* quadratic score per record, all records; lower is better */
-    double least_strength, largest_strength; /* of the prior, over the training parts; NaN without records */
+    size_t parts;                /* folds, groups, or 1 */
+    bool fewer_threads;          /* the system started fewer threads than were asked for */
+    double least_strength, largest_strength; /* of the prior, over the training parts whose records were scored; NaN when there is none */
 } bal_heldout;
 
-/** More records than this are not scored: bal_heldout_folds refuses. */
+/** More records than this are not scored: bal_heldout_run refuses. */
 #define BAL_HELDOUT_MOST_RECORDS ((uint64_t)100000000)
 #define BAL_HELDOUT_MOST_FOLDS ((size_t)65535)
 
@@ -65,24 +79,28 @@ BAL_API void bal_fold_run(uint64_t key, uint64_t run, size_t n_folds, size_t *fo
 /** splitmix64(splitmix64(seed, purpose 1), repeat): the key of the folds of a repeat (from 0). */
 BAL_API uint64_t bal_fold_key(uint64_t seed, uint64_t repeat);
 
+/** Whether record i is held out by HOLDOUT: splitmix64(key, i) < fraction x 2^64; every record from 1 on, none at 0. */
+BAL_API bool bal_is_held_out(uint64_t key, uint64_t record, double fraction);
+/** splitmix64(splitmix64(seed, purpose 2), repeat): the key of the holdout of a repeat (from 0). */
+BAL_API uint64_t bal_holdout_key(uint64_t seed, uint64_t repeat);
+
 /**
- * K-fold held-out comparison. Whatever the prior chooses from data it chooses anew inside each training part.
+ * Held-out comparison. Whatever the prior chooses from data it chooses anew inside each training part.
  *
- * counts  of the whole source, as bal_tally gives them
- * source  is rewound and gone over
+ * counts  of the whole training data, as bal_tally gives them (with earlier counts, under a carried prior)
+ * source  the records that are held out: those counted, or the test table; rewound and gone over. A record of whole weight w is
+ *         w records. A variable without a column is left out with every family that touches it.
  *
- * Fails:  ARGUMENT for folds out of range, and when the source has other variables; DATA beyond
- *         BAL_HELDOUT_MOST_RECORDS, and "changed-while-read" when the source's records are not those of the counts;
- *         whatever the source meets; MEMORY; NUMERIC.
- * Cost:   two passes over the records, O(records x (variables + arcs)), and folds times the cost of settling the
- *         prior; 8 bytes a cell and fold with records for the folds' counts, and at most prediction_bytes (or one
- *         fold's 48 bytes a cell, if that is more) for their predictions: where that is not enough for all folds, more
- *         passes.
+ * Fails:  ARGUMENT for options out of range, or GROUPS without a fold column; DATA beyond BAL_HELDOUT_MOST_RECORDS, where a weight
+ *         is not whole, and "changed-while-read" when records are held out that counts does not hold; whatever the source meets; MEMORY; NUMERIC.
+ * Cost:   two passes over the records a repeat, O(records x (variables + arcs)), and parts times the cost of settling the
+ *         prior; 8 bytes a cell and part for the parts' counts, and at most prediction_bytes (or one part's 48 bytes a
+ *         cell, if that is more) for their predictions: where that is not enough for all parts, more passes. 32 bytes a record when
+ *         repeats > 1.
  * Source: the impossible/undefined/comparable split is direct; Brier 1950 for the quadratic score.
  */
-BAL_API BAL_MUST_CHECK bal_status bal_heldout_folds(const bal_prior *prior, const bal_cells *counts, bal_source *source,
-                                                    const bal_heldout_options *options, bal_heldout *out,
-                                                    bal_error *err);
+BAL_API BAL_MUST_CHECK bal_status bal_heldout_run(const bal_prior *prior, const bal_cells *counts, bal_source *source,
+                                                  const bal_heldout_options *options, bal_heldout *out, bal_error *err);
 
 /**
  * Is this table enough: the share of records that are alone in some row (cell) they need, which estimates the
@@ -95,7 +113,7 @@ typedef struct bal_support {
 /**
  * The shares over whole records: a record counts when it is alone in a row (cell) of at least one family.
  *
- * counts, source  as above; source may be NULL: then out is NaN
+ * counts, source  as above; source may be NULL, and its weights may be fractional: then out is NaN
  * row_shares, cell_shares  one a variable: the share for that family alone; may be NULL
  *
  * Fails:  ARGUMENT when the source has other variables; whatever the source meets; MEMORY.

@@ -24,8 +24,10 @@ typedef struct bal_block {
     size_t n_columns;           /* variables of the domain */
     unsigned width;             /* bytes a code, 1 or 2 */
     const void *const *columns; /* n_columns pointers */
-    const double *weights;      /* n_records case weights, or NULL when every weight is 1 */
-    uint64_t first_record;      /* place of the first record in the table(s), from 0, before dropping */
+    const double *weights;      /* n_records case weights, whole multiples of 2^-32; NULL when every weight is 1 */
+    const uint32_t *groups;     /* n_records numbers of the fold column's labels, by first appearance; NULL without one */
+    uint64_t first_record;      /* place of the first record in the table(s), from 0, before dropping; a record of whole
+                                   weight w takes w places */
     const uint64_t *places;     /* place of each record, or NULL when they follow first_record in order */
 } bal_block;
 
@@ -49,8 +51,13 @@ typedef struct bal_source bal_source;
 
 /** What a pass over a source met. Complete once bal_source_next has given the empty block. */
 typedef struct bal_source_summary {
-    uint64_t records;            /* records given: after dropping */
+    uint64_t records;            /* records given: after dropping; lines of the table, whatever their weight */
     uint64_t dropped;            /* records left out because a wanted cell was missing */
+    uint64_t incomplete;         /* records given although a wanted cell was missing */
+    uint64_t places;             /* places gone over: records given and dropped, whole weights expanded */
+    double weight;               /* sum of the weights of the records given */
+    bool fractional;             /* some weight is not whole: records have no places, and cannot be left out one by one */
+    size_t n_groups;             /* labels of the fold column */
     const uint64_t *missing;     /* missing cells of each variable of the domain; borrowed; NULL when the source
                                     cannot have any */
     const char *const *ignored;  /* names of columns that no variable has; borrowed */
@@ -92,6 +99,15 @@ BAL_API void bal_source_free(bal_source *source);
  */
 BAL_API BAL_MUST_CHECK bal_status bal_source_keep_take(bal_source *source, size_t memory_limit, bal_source **out,
                                                        bal_error *err);
+
+/**
+ * Several sources one after another, as one: the places of each follow those of the one before.
+ *
+ * sources  over one domain, n >= 1 of them; taken: they are freed with the joined one, and also when this call fails
+ *
+ * Fails:  MEMORY; ARGUMENT when the domains differ.
+ */
+BAL_API BAL_MUST_CHECK bal_status bal_source_join_take(bal_source *const *sources, size_t n, bal_source **out, bal_error *err);
 
 #ifdef __cplusplus
 }

@@ -23,6 +23,18 @@ extern "C" {
 BAL_API BAL_MUST_CHECK bal_status bal_tally(const bal_network *network, bal_source *source, bal_cells **counts,
                                             bal_error *err);
 
+/**
+ * The same on several threads: where the source can be read in parts (a regular file), parts with fixed bounds are counted by
+ * themselves and added, which changes no count. Whatever a part meets that has to be told makes the source be read again in order, so
+ * that messages come as they would on one thread.
+ *
+ * source     at its first record
+ * n_threads  >= 1
+ * fewer      whether the system started fewer threads than were asked for and of use; may be NULL
+ */
+BAL_API BAL_MUST_CHECK bal_status bal_tally_threads(const bal_network *network, bal_source *source, unsigned n_threads, bool *fewer,
+                                                    bal_cells **counts, bal_error *err);
+
 /** sum over the cells of the first family: how many records were counted. */
 BAL_API double bal_tally_records(const bal_cells *counts);
 

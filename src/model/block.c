@@ -30,7 +30,7 @@ bal_status bal_source_rewind(bal_source *source, bal_error *err) {
 void bal_source_locate(bal_source *source, uint64_t place, bal_error *err) {
     if (!err) return;
     if (source->methods->locate) source->methods->locate(source, place, err);
-    bal_error_context(err, (size_t)place + 1, NULL);
+    else bal_error_context(err, (size_t)place + 1, NULL);
 }
 
 void bal_source_summary_get(const bal_source *source, bal_source_summary *out) {

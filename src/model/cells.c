@@ -3,6 +3,7 @@
 #include "base/memory.h"
 #include "model/shape.h"
 
+#include <math.h>
 #include <string.h>
 
 struct bal_cells {
@@ -69,6 +70,16 @@ void bali_cells_subtract(bal_cells *to, const bal_cells *from) {
 
 void bali_cells_assign(bal_cells *to, const bal_cells *from) {
     memcpy(to->values, from->values, bal_network_cells(to->network) * sizeof *to->values);
+}
+
+void bali_cells_clear(bal_cells *cells) {
+    for (size_t c = 0; c < bal_network_cells(cells->network); c++) cells->values[c] = 0;
+}
+
+bool bali_cells_are_whole(const bal_cells *cells) {
+    for (size_t c = 0; c < bal_network_cells(cells->network); c++)
+        if (cells->values[c] != floor(cells->values[c])) return false;
+    return true;
 }
 
 double bali_row_sum(const double *row, size_t n) {

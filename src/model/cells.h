@@ -15,6 +15,12 @@ void bali_cells_subtract(bal_cells *to, const bal_cells *from);
 /** to = from; cells of equal networks. */
 void bali_cells_assign(bal_cells *to, const bal_cells *from);
 
+/** All cells 0 again. */
+void bali_cells_clear(bal_cells *cells);
+
+/** Whether every cell holds a whole number. */
+bool bali_cells_are_whole(const bal_cells *cells);
+
 /** The sum of n numbers, in order; n is a row's length, so no compensation is needed for counts. */
 double bali_row_sum(const double *row, size_t n);
 

@@ -8,7 +8,7 @@
 #include <string.h>
 
 typedef struct kept_block {
-    bal_block block;      /* columns, weights and places point into bytes */
+    bal_block block;      /* columns, weights, places and groups point into bytes */
     const void **columns;
     char *bytes;
 } kept_block;
@@ -39,7 +39,7 @@ static size_t count_columns(const bal_block *block) {
     return n;
 }
 
-/* Copies the parts of a block behind one another, those of eight bytes first so that they are aligned. */
+/* Copies the parts of a block behind one another, the widest first so that they are aligned. */
 static void copy_parts(kept_block *k, const bal_block *from) {
     char *at = k->bytes;
     if (from->weights) {
@@ -49,6 +49,10 @@ static void copy_parts(kept_block *k, const bal_block *from) {
     if (from->places) {
         k->block.places = memcpy(at, from->places, from->n_records * sizeof *from->places);
         at += from->n_records * sizeof *from->places;
+    }
+    if (from->groups) {
+        k->block.groups = memcpy(at, from->groups, from->n_records * sizeof *from->groups);
+        at += from->n_records * sizeof *from->groups;
     }
     for (size_t v = 0; v < from->n_columns; v++) {
         if (!from->columns[v]) continue;
@@ -60,7 +64,7 @@ static void copy_parts(kept_block *k, const bal_block *from) {
 /* Keeps a copy of a block if memory and the limit allow; otherwise lets everything go. */
 static void keep_block(kept *k, const bal_block *from) {
     size_t bytes = from->n_records * (count_columns(from) * from->width + (from->weights ? sizeof(double) : 0) +
-                                      (from->places ? sizeof(uint64_t) : 0));
+                                      (from->places ? sizeof(uint64_t) : 0) + (from->groups ? sizeof(uint32_t) : 0));
     kept_block copy = {.block = *from};
     size_t all = bytes + from->n_columns * sizeof *copy.columns + sizeof copy;
     if (all > k->limit - k->used || !bali_grow((void **)&k->blocks, &k->capacity, k->n_blocks + 1, sizeof *k->blocks)) {
@@ -125,7 +129,31 @@ static void kept_free(bal_source *source) {
     bali_free(k);
 }
 
-static const bali_source_methods methods = {kept_next, kept_rewind, kept_locate, kept_summary, kept_free};
+/* Parts are those of the inner source while nothing is kept; to be kept, records have to come in order. */
+static size_t kept_parts(bal_source *source) {
+    kept *k = (kept *)source;
+    const bali_source_parts *parts = k->inner->methods->parts;
+    return parts && !k->keeping && !k->serving ? parts->count(k->inner) : 0;
+}
+
+static bal_status kept_open_part(bal_source *source, size_t part, bal_source **out, bal_error *err) {
+    bal_source *inner = ((kept *)source)->inner;
+    return inner->methods->parts->open(inner, part, out, err);
+}
+
+static void kept_close_part(bal_source *source, size_t part, bal_source *opened) {
+    bal_source *inner = ((kept *)source)->inner;
+    inner->methods->parts->close(inner, part, opened);
+}
+
+static bool kept_join_parts(bal_source *source) {
+    bal_source *inner = ((kept *)source)->inner;
+    return inner->methods->parts->join(inner);
+}
+
+static const bali_source_parts parts = {kept_parts, kept_open_part, kept_close_part, kept_join_parts};
+
+static const bali_source_methods methods = {kept_next, kept_rewind, kept_locate, kept_summary, kept_free, &parts};
 
 bal_status bal_source_keep_take(bal_source *source, size_t memory_limit, bal_source **out, bal_error *err) {
     *out = NULL;

@@ -159,6 +159,35 @@ START_TEST(what_is_written_reads_back_equal) {
 }
 END_TEST
 
+/* Whole numbers go by a path of their own, both ways: it has to agree with the C library's at its ends. */
+static const double wholes_written[] = {0, -0.0, 1, -1, 9, 10, 99, 100, 65535, 4294967295.0, 4294967296.0, 99999999999999, 100000000000000, 999999999999998,
+                                        999999999999999, 999999999999999.5, 999999999999999.875, 1e15, 1e15 + 1, 9007199254740991.0, 9007199254740992.0,
+                                        18446744073709551615.0, 1e22, 0.5, 0.9999999999999999, 1.0000000000000002, 1.5, 123456.5, 0x1p-32, 3 + 0x1p-32,
+                                        DBL_MIN, DBL_MAX, -999999999999999.0};
+
+START_TEST(whole_numbers_are_written_as_the_c_library_does) {
+    double value = wholes_written[_i], back;
+    char text[BALI_NUMBER_BYTES], wanted[64];
+    for (int digits = 15; digits <= 17; digits++) {
+        (void)snprintf(wanted, sizeof wanted, "%.*g", digits, value);
+        if (strtod(wanted, NULL) == value) break;
+    }
+    ck_assert_str_eq(bali_number_write(value, text), wanted);
+    ck_assert(bali_number_read(text, strlen(text), &back));
+    ck_assert(back == value && signbit(back) == signbit(value));
+}
+END_TEST
+
+static const char *const digit_runs[] = {"0", "00", "7", "000000000000007", "0000000000000007", "999999999999999", "9999999999999999", "100000000000000",
+                                         "1000000000000000", "9007199254740993", "18446744073709551616", "123456789012345678901234567890"};
+
+START_TEST(runs_of_digits_are_read_as_the_c_library_does) {
+    double read = -1;
+    ck_assert(bali_number_read(digit_runs[_i], strlen(digit_runs[_i]), &read));
+    ck_assert(read == strtod(digit_runs[_i], NULL));
+}
+END_TEST
+
 static const struct {
     uint64_t value;
     const char *text;
@@ -252,6 +281,8 @@ static Suite *suite(void) {
     tcase_add_loop_test(tests, whole_numbers_read_whole_or_not_at_all, 0, (int)(sizeof wholes / sizeof wholes[0]));
     tcase_add_loop_test(tests, numbers_are_written_short, 0, (int)(sizeof written / sizeof written[0]));
     tcase_add_test(tests, what_is_written_reads_back_equal);
+    tcase_add_loop_test(tests, whole_numbers_are_written_as_the_c_library_does, 0, (int)(sizeof wholes_written / sizeof wholes_written[0]));
+    tcase_add_loop_test(tests, runs_of_digits_are_read_as_the_c_library_does, 0, (int)(sizeof digit_runs / sizeof digit_runs[0]));
     tcase_add_loop_test(tests, thousands_are_set_apart, 0, (int)(sizeof thousands / sizeof thousands[0]));
     tcase_add_test(tests, numbers_join_a_text);
     tcase_add_loop_test(tests, rounds_as_decimal_text_would, 0, (int)(sizeof roundings / sizeof roundings[0]));

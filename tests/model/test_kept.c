@@ -12,6 +12,7 @@ typedef struct given {
     bal_network *network;
     int *codes;
     uint64_t places[RECORDS];
+    uint32_t groups[RECORDS];
     fixture_table table;
 } given;
 
@@ -21,6 +22,7 @@ static void set_up(given *g, const char *text) {
     bal_cells *tables = random_tables(&d, g->network, 0);
     g->codes = random_codes(&d, tables, RECORDS, 0.1);
     for (size_t i = 0; i < RECORDS; i++) g->places[i] = 3 * i + 1;
+    for (size_t i = 0; i < RECORDS; i++) g->groups[i] = (uint32_t)(i * i % 11);
     g->table = (fixture_table){.codes = g->codes, .n_records = RECORDS, .block_records = BLOCK};
     bal_cells_free(tables);
 }
@@ -44,6 +46,7 @@ static size_t count_differences(const bal_block *block, size_t t, const given *g
         wrong += bal_block_code(block, v, t) != (code < 0 ? BAL_NONE : (size_t)code);
     }
     wrong += bal_block_place(block, t) != (g->table.places ? g->places[at] : at);
+    wrong += g->table.groups && block->groups[t] != g->groups[at];
     return wrong + (g->table.weighted && block->weights[t] != (double)at + 1);
 }
 
@@ -57,6 +60,7 @@ static void check_pass(bal_source *source, const given *g) {
         ck_assert_uint_eq(block.n_columns, VARIABLES);
         ck_assert_int_eq(block.columns[0] == NULL, g->table.narrow);
         ck_assert_int_eq(block.weights != NULL, g->table.weighted);
+        ck_assert_int_eq(block.groups != NULL, g->table.groups != NULL);
         for (size_t t = 0; t < block.n_records; t++, at++) wrong += count_differences(&block, t, g, at);
     }
     ck_assert_uint_eq(wrong, 0);
@@ -78,12 +82,13 @@ static bool reads_medium(bal_source *source, const given *g) {
 
 static const struct {
     const char *network;
-    bool weighted, narrow, places;
+    bool weighted, narrow, places, groups;
     size_t block_records; /* 0 = BLOCK */
 } shapes[] = {
-    {"A:#3 ; B:#4 | A ; C:#2", false, false, false, 0}, {"A:#3 ; B:#4 | A ; C:#300", false, false, false, 0},
-    {"A:#3 ; B:#4 ; C:#2", true, false, true, 0},       {"A:#3 ; B:#4 ; C:#300", true, true, true, 0},
-    {"A:#3 ; B:#4 ; C:#2", false, true, true, 0},       {"A:#3 ; B:#4 ; C:#2", true, false, false, 999}, /* and 1 */
+    {"A:#3 ; B:#4 | A ; C:#2", false, false, false, false, 0}, {"A:#3 ; B:#4 | A ; C:#300", false, false, false, false, 0},
+    {"A:#3 ; B:#4 ; C:#2", true, false, true, true, 0},        {"A:#3 ; B:#4 ; C:#300", true, true, true, true, 0},
+    {"A:#3 ; B:#4 ; C:#2", false, true, true, true, 0},        {"A:#3 ; B:#4 ; C:#2", true, false, false, false, 999}, /* and 1 */
+    {"A:#3 ; B:#4 ; C:#300", false, false, false, true, 0},
 };
 
 START_TEST(later_passes_are_the_same_from_memory) {
@@ -92,6 +97,7 @@ START_TEST(later_passes_are_the_same_from_memory) {
     g.table.weighted = shapes[_i].weighted;
     g.table.narrow = shapes[_i].narrow;
     g.table.places = shapes[_i].places ? g.places : NULL;
+    g.table.groups = shapes[_i].groups ? g.groups : NULL;
     if (shapes[_i].block_records > 0) g.table.block_records = shapes[_i].block_records;
     bal_source *kept = keep(&g, SIZE_MAX);
     ck_assert(reads_medium(kept, &g));

@@ -5,6 +5,7 @@
 #include "model/shape.h"
 
 #include <ctype.h>
+#include <math.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
@@ -207,15 +208,15 @@ static bal_status fixture_next(bal_source *source, bal_block *block, bal_error *
     all_blocks++;
     if (++s->n_blocks == s->table.fail_at) return bal_error_set(err, BAL_ERR_IO, "cannot-read", "a fixture that cannot be read");
     for (size_t t = 0; t < n; t++) {
-        for (size_t v = s->table.narrow; v < s->n_variables; v++)
-            put_code(s, v, t, s->table.codes[(s->at + t) * s->n_variables + v]);
-        s->weights[t] = (double)(s->at + t + 1);
+        for (size_t v = s->table.narrow; v < s->n_variables; v++) put_code(s, v, t, s->table.codes[(s->at + t) * s->n_variables + v]);
+        s->weights[t] = s->table.weights ? s->table.weights[s->at + t] : (double)(s->at + t + 1);
     }
     *block = (bal_block){.n_records = n,
                          .n_columns = s->n_variables,
                          .width = s->width,
                          .columns = (const void *const *)s->columns,
-                         .weights = s->table.weighted ? s->weights : NULL,
+                         .weights = s->table.weighted || s->table.weights ? s->weights : NULL,
+                         .groups = s->table.groups ? s->table.groups + s->at : NULL,
                          .first_record = s->at,
                          .places = s->table.places ? s->table.places + s->at : NULL};
     s->at += n;
@@ -232,10 +233,20 @@ static bal_status fixture_rewind(bal_source *source, bal_error *err) {
 static void fixture_locate(bal_source *source, uint64_t place, bal_error *err) {
     (void)source;
     bal_error_place(err, "fixture.csv", (size_t)place + 2, 0);
+    bal_error_context(err, (size_t)place + 1, NULL);
 }
 
 static void fixture_summary(const bal_source *source, bal_source_summary *out) {
-    out->records = ((const fixture_source *)source)->at;
+    const fixture_source *s = (const fixture_source *)source;
+    const fixture_table *table = &s->table;
+    out->records = s->at;
+    out->n_groups = table->n_groups;
+    for (size_t i = 0; i < s->at; i++) {
+        double weight = table->weights ? table->weights[i] : table->weighted ? (double)(i + 1) : 1;
+        out->weight += weight;
+        out->fractional |= weight != floor(weight);
+    }
+    out->places = table->all_places ? table->all_places : (uint64_t)out->weight;
 }
 
 static void fixture_free(bal_source *source) {
@@ -246,7 +257,7 @@ static void fixture_free(bal_source *source) {
     free(s);
 }
 
-static const bali_source_methods fixture_methods = {fixture_next, fixture_rewind, fixture_locate, fixture_summary, fixture_free};
+static const bali_source_methods fixture_methods = {fixture_next, fixture_rewind, fixture_locate, fixture_summary, fixture_free, NULL};
 
 bal_source *source_of(const bal_domain *domain, const fixture_table *table) {
     fixture_source *s = make(1, sizeof *s);
@@ -271,6 +282,16 @@ bal_prior *prior_of(const bal_network *network, const bal_prior_options *options
     bal_prior *prior;
     bal_error err = {0};
     must(bal_prior_create(network, options, &prior, &err), &err);
+    return prior;
+}
+
+bal_prior *carried_prior(const bal_cells *pseudo_counts) {
+    bal_document *document = NULL;
+    bal_error err = {0};
+    must(bal_document_create(bal_cells_network(pseudo_counts), "fitted", &document, &err), &err);
+    must(bal_document_set_cells(document, BAL_CARRIED_PSEUDO_COUNTS, pseudo_counts, &err), &err);
+    bal_prior *prior = prior_of(bal_cells_network(pseudo_counts), &(bal_prior_options){.kind = BAL_PRIOR_CARRIED, .strength = 1, .carried = document});
+    bal_document_free(document);
     return prior;
 }
 

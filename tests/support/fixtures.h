@@ -34,7 +34,11 @@ typedef struct fixture_table {
     size_t block_records;    /* 0 = 4096 */
     size_t fail_at;          /* the fail_at-th block, over all passes, fails with IO; 0 = none does */
     bool pipe;               /* cannot go back once a block was taken */
-    bool weighted;           /* carries weights: 1 + the record's number */
+    bool weighted;           /* carries weights: 1 + the record's number, unless weights says otherwise */
+    const double *weights;   /* one a record, or NULL */
+    const uint32_t *groups;  /* numbers of the fold column's labels, one a record, or NULL */
+    size_t n_groups;
+    uint64_t all_places;     /* what the summary says; 0 = those that the records take */
     bool narrow;             /* columns of variable 0 are not there (NULL) */
 } fixture_table;
 bal_source *source_of(const bal_domain *domain, const fixture_table *table);
@@ -43,6 +47,8 @@ bal_source *plain_source(const bal_network *network, const int *codes, size_t n_
 /** Blocks (the empty last one included) that all fixture sources together have given so far. */
 size_t fixture_blocks(void);
 
+/** A carried prior: the pseudo-counts of an earlier fit. */
+bal_prior *carried_prior(const bal_cells *pseudo_counts);
 /** A prior by its options. */
 bal_prior *prior_of(const bal_network *network, const bal_prior_options *options);
 /** A prior of a kind at a given strength; BDEU, K2 or JEFFREYS. */
