@@ -49,8 +49,21 @@ static void take_name(bali_csv_buffer *buffer) {
     memcpy(buffer->facts.name, name, length);
 }
 
+/* The bytes of the file as they are on disk. */
+static void add_to_hash(void *context, const char *bytes, size_t length) {
+    bali_csv_buffer *buffer = context;
+    if (!buffer->hash) return;
+    if (bali_input_position(buffer->input) <= LARGEST_HASHED) {
+        bali_hash_add(buffer->hash, bytes, length);
+        return;
+    }
+    bali_hash_free(buffer->hash);
+    buffer->hash = NULL;
+}
+
 bal_status bali_csv_buffer_open(bali_csv_buffer *buffer, const char *path, size_t chunk_bytes, bal_error *err) {
     bal_status status = bali_input_open(path, &buffer->input, err);
+    if (status == BAL_OK) status = bali_gzip_create(buffer->input, (bali_gzip_watch){add_to_hash, buffer}, &buffer->bytes, err);
     if (status != BAL_OK) return status;
     take_name(buffer);
     buffer->chunk = chunk_bytes;
@@ -64,7 +77,7 @@ bal_status bali_csv_buffer_open(bali_csv_buffer *buffer, const char *path, size_
 }
 
 bal_status bali_csv_buffer_rewind(bali_csv_buffer *buffer, bal_error *err) {
-    bal_status status = bali_input_rewind(buffer->input, err);
+    bal_status status = bali_gzip_rewind(buffer->bytes, err);
     if (status != BAL_OK) return status;
     if (buffer->hash) { /* the first pass was not finished: hash from the start */
         char unused[BALI_HASH_TEXT];
@@ -75,6 +88,7 @@ bal_status bali_csv_buffer_rewind(bali_csv_buffer *buffer, bal_error *err) {
 }
 
 void bali_csv_buffer_close(bali_csv_buffer *buffer) {
+    bali_gzip_free(buffer->bytes);
     bali_input_close(buffer->input);
     bali_hash_free(buffer->hash);
     bali_free(buffer->memory);
@@ -108,13 +122,10 @@ static bal_status keep_cell(bali_csv_buffer *buffer, bal_error *err) {
     return BAL_OK;
 }
 
-static void take_facts(bali_csv_buffer *buffer, const char *bytes, size_t length) {
-    uint64_t position = bali_input_position(buffer->input);
-    if (buffer->exhausted) buffer->facts.bytes = position;
-    if (!buffer->hash) return;
-    if (position <= LARGEST_HASHED) bali_hash_add(buffer->hash, bytes, length);
-    if (position <= LARGEST_HASHED && !buffer->exhausted) return;
-    if (position <= LARGEST_HASHED) bali_hash_take(buffer->hash, buffer->facts.sha256);
+/* The whole file was read. */
+static void take_facts(bali_csv_buffer *buffer) {
+    buffer->facts.bytes = bali_input_position(buffer->input);
+    if (buffer->hash) bali_hash_take(buffer->hash, buffer->facts.sha256);
     bali_hash_free(buffer->hash);
     buffer->hash = NULL;
 }
@@ -129,13 +140,13 @@ bal_status bali_csv_buffer_fill(bali_csv_buffer *buffer, const char **p, bool *m
     if (status != BAL_OK) return status;
     *p = buffer->cell + scanned;
     char *chunk = buffer->memory + buffer->room;
-    status = bali_input_read(buffer->input, chunk, buffer->chunk, &got, err);
+    status = bali_gzip_read(buffer->bytes, chunk, buffer->chunk, &got, err);
     if (status != BAL_OK) got = 0;
     memset(chunk + got, 0, BALI_CSV_READABLE);
     buffer->end = chunk + got;
     buffer->exhausted = status == BAL_OK && got < buffer->chunk;
     *more = got > 0;
-    if (status == BAL_OK) take_facts(buffer, chunk, got);
+    if (buffer->exhausted) take_facts(buffer);
     return status;
 }
 

@@ -7,6 +7,7 @@
 #define FORMATS_CSV_BUFFER_H
 
 #include "base/files.h"
+#include "base/gzip.h"
 #include "base/hash.h"
 #include "formats/csv.h"
 
@@ -18,14 +19,15 @@ typedef struct bali_csv_line {
 
 typedef struct bali_csv_buffer {
     bali_input *input;
+    bali_gzip *bytes;      /* of the input, decompressed */
     char *memory;
     size_t room, chunk;
-    bool exhausted;        /* the input has no more bytes */
+    bool exhausted;        /* there are no more bytes */
     const char *cell;      /* the first byte that is kept */
     const char *at, *end;  /* what is not yet read, and the end of what is at hand */
     bali_csv_line line;      /* the one in which at stands */
     bali_csv_line cell_line; /* the one in which the cell begins */
-    bali_hash *hash;         /* NULL once the file is too large or was hashed */
+    bali_hash *hash;         /* of the file as it is on disk; NULL once the file is too large or was hashed */
     bal_file_facts facts;
 } bali_csv_buffer;
 
@@ -39,7 +41,7 @@ void bali_csv_buffer_close(bali_csv_buffer *buffer);
  * Reads the next chunk behind the bytes from the cell on. *p, which stands among those, moves with them; *more says
  * whether anything came.
  *
- * Fails:  SYNTAX when the cell is longer than BALI_CSV_CELL_LIMIT; IO; DATA "changed-while-read"; MEMORY.
+ * Fails:  SYNTAX when the cell is longer than BALI_CSV_CELL_LIMIT, "bad-gzip"; IO; DATA "changed-while-read", "gzip-ratio"; MEMORY.
  */
 BAL_MUST_CHECK bal_status bali_csv_buffer_fill(bali_csv_buffer *buffer, const char **p, bool *more, bal_error *err);
 /** Makes sure that n bytes stand at *p unless the file ends before. */

@@ -15,7 +15,7 @@ typedef struct signature {
 #define SIGNATURE(bytes, code, what) {bytes, sizeof bytes - 1, code, what}
 
 static const signature signatures[] = {
-    SIGNATURE("\x1F\x8B", "not-a-table", "gzip data; decompress it first (gunzip)"),
+    SIGNATURE("\x1F\x8B", "not-a-table", "gzip data inside gzip data; decompress it once (gunzip)"),
     SIGNATURE("BZh91AY&SY", "not-a-table", "bzip2 data; decompress it first (bunzip2)"),
     SIGNATURE("\xFD" "7zXZ", "not-a-table", "xz data; decompress it first (unxz)"),
     SIGNATURE("\x28\xB5\x2F\xFD", "not-a-table", "zstd data; decompress it first (unzstd)"),
@@ -94,6 +94,7 @@ bal_status bali_csv_look(const char *bytes, size_t length, bal_error *err) {
 
 char bali_csv_guess_delimiter(const char *path, const char *line, size_t length) {
     size_t name = strlen(path);
+    if (name >= 3 && begins_with(path + name - 3, 3, ".gz")) name -= 3;
     if (name >= 4 && begins_with(path + name - 4, 4, ".tsv")) return '\t';
     bool quoted = false;
     for (size_t i = 0; i < length; i++) {

@@ -19,7 +19,7 @@ size_t bali_csv_line_length(const char *bytes, size_t length, bool *complete);
  */
 BAL_MUST_CHECK bal_status bali_csv_look(const char *bytes, size_t length, bal_error *err);
 
-/** Tab when the file's name ends in .tsv or its first line has a tab outside quotes, else comma. */
+/** Tab when the file's name ends in .tsv or .tsv.gz, or its first line has a tab outside quotes, else comma. */
 char bali_csv_guess_delimiter(const char *path, const char *line, size_t length);
 
 /** One piece of the first line split at a delimiter outside quotes, without outer blanks and outer quotes. *at starts at

@@ -302,6 +302,7 @@ bal_status bali_draft_resolve(const bali_draft *draft, const bal_network_options
     if (status == BAL_OK)
         status = bali_draft_fill(draft, r.definition_of, options->for_slowest, remarks, r.document, err);
     if (status == BAL_OK) status = add_properties(&r, err);
+    if (status == BAL_OK) status = bali_draft_check_columns(draft, r.document, err);
     if (status == BAL_OK) {
         *out = r.document;
         r.document = NULL;

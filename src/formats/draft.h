@@ -37,6 +37,7 @@ typedef struct bali_draft_definition {
 typedef struct bali_draft_property {
     bal_property_of of;
     size_t owner; /* which variable or definition of the draft; 0 for the network */
+    size_t at;
     char *text;
     size_t length;
 } bali_draft_property;
@@ -98,5 +99,9 @@ BAL_MUST_CHECK bal_status bali_draft_resolve(const bali_draft *draft, const bal_
 BAL_MUST_CHECK bal_status bali_draft_fill(const bali_draft *draft, const bali_draft_definition *const *definition_of,
                                           bool for_slowest, bali_remarks *remarks, bal_document *document,
                                           bal_error *err);
+
+/** Checks what a draft's properties say of the columns of tables, which its document holds already. Fails: DATA "bad-column", "bad-cuts",
+ *  "duplicate-property" with file, line and column; MEMORY. */
+BAL_MUST_CHECK bal_status bali_draft_check_columns(const bali_draft *draft, const bal_document *document, bal_error *err);
 
 #endif

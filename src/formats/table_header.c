@@ -16,6 +16,7 @@ typedef struct reading {
     bali_table_header *header;
     bali_csv *csv;
     const bal_domain *domain;
+    const bali_column_rules *rules;
     const bal_table_options *options;
     bali_names seen;
     size_t bytes; /* of all names */
@@ -23,6 +24,18 @@ typedef struct reading {
 
 static bool is_wanted(const bal_table_options *options, size_t variable) {
     return !options->wanted || options->wanted[variable];
+}
+
+/* The variable whose column has this name. */
+static size_t bound_variable(const reading *r, const char *name, size_t length) {
+    size_t variable = bali_column_rules_find(r->rules, name, length);
+    return variable != BAL_NONE ? variable : bali_domain_find(r->domain, name, length);
+}
+
+/* Whether a column is asked for by its own name. */
+static bool is_asked_for(const reading *r, const char *name) {
+    const char *weight = r->options->weight, *group = r->options->fold_column;
+    return (weight && strcmp(weight, name) == 0) || (group && strcmp(group, name) == 0);
 }
 
 static bal_status refuse_column(const reading *r, size_t variable, bal_error *err) {
@@ -39,7 +52,7 @@ static bool names_variable(const reading *r, const char *line, size_t length, ch
     size_t at = 0, piece_length, pieces = 0;
     *variable = BAL_NONE;
     while (bali_csv_split(line, length, delimiter, &at, &piece, &piece_length)) {
-        if (*variable == BAL_NONE) *variable = bali_domain_find(r->domain, piece, piece_length);
+        if (*variable == BAL_NONE) *variable = bound_variable(r, piece, piece_length);
         pieces++;
     }
     return pieces > 1 && *variable != BAL_NONE;
@@ -53,7 +66,7 @@ static bal_status check_delimiter(const reading *r, bal_error *err) {
     const char *piece, *line = bali_csv_first_line(r->csv, &length);
     char delimiter = bali_csv_delimiter(r->csv);
     bool whole = bali_csv_split(line, length, delimiter, &at, &piece, &piece_length) && at > length;
-    if (!whole || bali_domain_find(r->domain, piece, piece_length) != BAL_NONE) return BAL_OK;
+    if (!whole || bound_variable(r, piece, piece_length) != BAL_NONE) return BAL_OK;
     for (const char *other = usual; *other; other++) {
         if (*other == delimiter || !names_variable(r, line, length, *other, &variable)) continue;
         bali_phrase phrase = {0};
@@ -119,10 +132,6 @@ static bool add_name(bali_table_header *header, const bali_csv_cell *cell, size_
     if (!copy) return false;
     header->variables[header->n_columns] = variable;
     header->names[header->n_columns++] = copy;
-    if (variable != BAL_NONE) return true;
-    n = header->n_ignored + 1;
-    if (!bali_grow((void **)&header->ignored, &header->ignored_capacity, n, sizeof *header->ignored)) return false;
-    header->ignored[header->n_ignored++] = copy;
     return true;
 }
 
@@ -131,12 +140,12 @@ static bal_status read_name(reading *r, const bali_csv_cell *cell, bal_error *er
     if (cell->length == 0) return empty_column(r, cell, err);
     r->bytes += cell->length;
     if (header->n_columns == BALI_MOST_COLUMNS || r->bytes > BALI_MOST_HEADER_BYTES) return too_many_columns(r, err);
-    size_t variable = bali_domain_find(r->domain, cell->text, cell->length), first;
+    size_t variable = bound_variable(r, cell->text, cell->length), first;
     if (!add_name(header, cell, variable)) return bali_out_of_memory(err);
     const char *name = header->names[header->n_columns - 1];
     if (!bali_names_add(&r->seen, name, &first)) return bali_out_of_memory(err);
     if (first != BALI_NO_NAME) return duplicate_column(r, first, name, variable, err);
-    if (variable == BAL_NONE && r->options->strict) return unexpected_column(r, name, err);
+    if (variable == BAL_NONE && r->options->strict && !is_asked_for(r, name)) return unexpected_column(r, name, err);
     return BAL_OK;
 }
 
@@ -152,6 +161,62 @@ static bal_status read_names(reading *r, bal_error *err) {
         if (status != BAL_OK) return status;
     } while (!cell.ends_record);
     return BAL_OK;
+}
+
+/* Where a variable has both a column of its own name and the one its ballast.column names, the first is of no use. */
+static bal_status unbind_own_names(reading *r, bal_error *err) {
+    bali_table_header *header = r->header;
+    for (size_t v = 0; v < r->rules->n_variables; v++) {
+        const char *name = bal_domain_name(r->domain, v), *column = r->rules->columns[v];
+        if (!column || strcmp(column, name) == 0 || bali_names_find(&r->seen, column, strlen(column)) == BALI_NO_NAME) continue;
+        size_t own = bali_names_find(&r->seen, name, strlen(name));
+        if (own == BALI_NO_NAME || header->variables[own] != v) continue;
+        header->variables[own] = BAL_NONE;
+        if (!r->options->strict || is_asked_for(r, name)) continue;
+        bali_phrase phrase = {0};
+        bali_phrase_quote(&phrase, name, strlen(name));
+        (void)bal_error_set(err, BAL_ERR_DATA, "unexpected-column",
+                            "column %zu, %s, is not used: ballast.column takes the variable from another one; remove it, or leave out "
+                            "--strict",
+                            own + 1, phrase.text);
+        bal_error_place(err, bali_csv_name(r->csv), header->line, 0);
+        return err ? err->status : BAL_ERR_DATA;
+    }
+    return BAL_OK;
+}
+
+static bal_status gather_ignored(reading *r, bal_error *err) {
+    bali_table_header *header = r->header;
+    header->ignored = bali_allocate(header->n_columns, sizeof *header->ignored);
+    if (!header->ignored) return bali_out_of_memory(err);
+    for (size_t c = 0; c < header->n_columns; c++)
+        if (header->variables[c] == BAL_NONE && !is_asked_for(r, header->names[c])) header->ignored[header->n_ignored++] = header->names[c];
+    return BAL_OK;
+}
+
+/* Finds a column that was asked for by its name. */
+static bal_status find_asked_for(const reading *r, const char *name, const char *what, size_t *place, bal_error *err) {
+    *place = BAL_NONE;
+    if (!name) return BAL_OK;
+    *place = bali_names_find(&r->seen, name, strlen(name));
+    if (*place != BALI_NO_NAME) return BAL_OK;
+    const bali_table_header *header = r->header;
+    bali_difference how;
+    bali_phrase phrase = {0};
+    size_t near = bali_spelling_nearest(name, strlen(name), (const char *const *)header->names, header->n_columns, &how);
+    bali_phrase_add(&phrase, "no column is named ");
+    bali_phrase_quote(&phrase, name, strlen(name));
+    bali_phrase_add(&phrase, ", which is to hold %s; ", what);
+    if (near == BALI_NO_NAME) {
+        bali_phrase_add(&phrase, "add it, or give the name of another column");
+    } else {
+        bali_phrase_add(&phrase, "did you mean ");
+        bali_phrase_quote(&phrase, header->names[near], strlen(header->names[near]));
+        bali_phrase_add(&phrase, "?");
+    }
+    (void)bal_error_set(err, BAL_ERR_DATA, "missing-column", "%s", phrase.text);
+    bal_error_place(err, bali_csv_name(r->csv), header->line, 0);
+    return err ? err->status : BAL_ERR_DATA;
 }
 
 /* Which wanted variables have no column. */
@@ -177,7 +242,7 @@ static bal_status find_absent(const reading *r, absent *found, bool **is_missing
         found->missing++;
         /* A network of thousands of variables against a table of thousands of columns is not worth every comparison. */
         bool worth = found->nearest == BAL_NONE && found->missing <= MOST_LISTED;
-        const char *name = bal_domain_name(r->domain, v);
+        const char *column = bali_column_rules_column(r->rules, v), *name = column ? column : bal_domain_name(r->domain, v);
         bali_difference how = BALI_DIFFERENT;
         size_t near = BALI_NO_NAME;
         if (worth) near = bali_spelling_nearest(name, strlen(name), header->ignored, header->n_ignored, &how);
@@ -228,6 +293,9 @@ static bal_status refuse_absent(const reading *r, const absent *found, const boo
     } else {
         bali_phrase_text(&phrase, name, strlen(name));
         bali_phrase_add(&phrase, " has no column");
+        const char *column = bali_column_rules_column(r->rules, found->first);
+        if (column) bali_phrase_add(&phrase, " ");
+        if (column) bali_phrase_quote(&phrase, column, strlen(column));
         if (found->missing > 1) say_others(r, found, is_missing, &phrase);
         if (found->nearest != BAL_NONE) say_nearest(r, found, &phrase);
         else bali_phrase_add(&phrase, "; add it, or rename the column that holds it");
@@ -269,11 +337,15 @@ static void tell_ignored(const reading *r) {
 }
 
 bal_status bali_table_header_read(bali_table_header *header, bali_csv *csv, const bal_domain *domain,
-                                  const bal_table_options *options, bal_error *err) {
-    reading r = {.header = header, .csv = csv, .domain = domain, .options = options};
+                                  const bali_column_rules *rules, const bal_table_options *options, bal_error *err) {
+    reading r = {.header = header, .csv = csv, .domain = domain, .rules = rules, .options = options};
     bal_status status = check_delimiter(&r, err);
     if (status == BAL_OK) status = read_names(&r, err);
+    if (status == BAL_OK) status = unbind_own_names(&r, err);
+    if (status == BAL_OK) status = gather_ignored(&r, err);
     if (status == BAL_OK) status = check_absent(&r, err);
+    if (status == BAL_OK) status = find_asked_for(&r, options->weight, "the weights", &header->weight, err);
+    if (status == BAL_OK) status = find_asked_for(&r, options->fold_column, "the labels of folds", &header->group, err);
     if (status == BAL_OK) tell_ignored(&r);
     bali_names_free(&r.seen);
     return status;

@@ -130,6 +130,43 @@ void bali_say_bad_label(const bali_bad_label *label, bali_phrase *phrase) {
     if (!label->redact) say_hint(label, phrase);
 }
 
+/* What to do about a text that should be a finite decimal number. */
+static const char *number_advice(const char *text, size_t length) {
+    bool digits = length > 0;
+    for (size_t i = 0; i < length; i++) digits = digits && strchr("0123456789,. '-+", text[i]) != NULL;
+    if (digits && memchr(text, ',', length)) return "use a decimal point, and nothing between thousands";
+    return "write a finite decimal number such as 12 or 0.5";
+}
+
+void bali_say_bad_number(const bali_bad_label *label, bali_phrase *phrase) {
+    const char *name = bal_domain_name(label->domain, label->variable);
+    if (label->redact) bali_phrase_add(phrase, "the text");
+    else bali_phrase_quote(phrase, label->text, label->length);
+    bali_phrase_add(phrase, " is not a number, of which ballast.cuts makes the outcomes of ");
+    bali_phrase_text(phrase, name, strlen(name));
+    if (label->record) bali_phrase_add(phrase, " in record %" PRIu64, label->record);
+    if (!label->redact && bali_domain_find_outcome(label->domain, label->variable, label->text, label->length) != BAL_NONE)
+        bali_phrase_add(phrase, "; such a column holds no outcomes: give the numbers, or remove ballast.cuts");
+    else
+        bali_phrase_add(phrase, "; %s", number_advice(label->text, label->length));
+    if (label->redact || !is_usual_missing(label->text, label->length)) return;
+    bali_phrase_add(phrase, "; if it means a missing cell, give --missing-label ");
+    bali_phrase_quote(phrase, label->text, label->length);
+}
+
+void bali_say_bad_weight(const char *text, size_t length, bool redact, bali_phrase *phrase) {
+    double number;
+    if (length == 0) {
+        bali_phrase_add(phrase, "the weight is missing; write it, or 0 for a record that does not count");
+        return;
+    }
+    if (redact) bali_phrase_add(phrase, "the text");
+    else bali_phrase_quote(phrase, text, length);
+    bali_phrase_add(phrase, " is not a weight; ");
+    if (!bali_number_read(text, length, &number)) bali_phrase_add(phrase, "%s", number_advice(text, length));
+    else bali_phrase_add(phrase, number < 0 ? "weights are not negative" : "weights are at most 1e15");
+}
+
 /* The variable with the largest count that comes after (count, variable) in the order told: large counts first. */
 static size_t next_largest(const bal_domain *domain, const uint64_t *counts, size_t after) {
     size_t best = BAL_NONE;

@@ -73,6 +73,9 @@ void bali_problems_conclude(bali_problems *problems, const bali_missing_cells *m
     if (problems->first.status == BAL_OK) return;
     bool missing_first = is_missing(&problems->first);
     tell_rest(problems, BALI_BAD_LABEL, "unknown-label", "unknown labels");
+    tell_rest(problems, BALI_BAD_NUMBER, "bad-number-cell", "cells that are no numbers");
+    tell_rest(problems, BALI_BAD_WEIGHT, "bad-weight", "bad weights");
+    tell_rest(problems, BALI_MISSING_GROUP, "missing-group", "missing labels of folds");
     tell_rest(problems, BALI_REPEATED_HEADER, "repeated-header", "repeated headers");
     if (problems->counts[BALI_MISSING_CELL] > 0) {
         bal_error sum;

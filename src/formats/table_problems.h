@@ -9,6 +9,9 @@
 
 typedef enum bali_problem_kind {
     BALI_BAD_LABEL,
+    BALI_BAD_NUMBER,
+    BALI_BAD_WEIGHT,
+    BALI_MISSING_GROUP,
     BALI_REPEATED_HEADER,
     BALI_MISSING_CELL,
     BALI_PROBLEM_KINDS

@@ -2,6 +2,7 @@
 
 #include "base/memory.h"
 #include "formats/table_messages.h"
+#include "formats/weights.h"
 
 #include <string.h>
 
@@ -25,17 +26,18 @@ static void tell(const bali_table_reader *t, bal_severity severity, bal_error *n
     if (t->notices.tell) t->notices.tell(t->notices.context, severity, notice);
 }
 
-static void report_label(bali_table_reader *t, const bali_table_column *c, const char *text, size_t length,
-                         const bali_table_suspect *at) {
-    if (!bali_problems_count(&t->problems, BALI_BAD_LABEL, c->variable)) return;
+/* A text that is no outcome, or no number where numbers are expected. */
+static void report_text(bali_table_reader *t, const bali_table_column *c, const char *text, size_t length, const bali_table_suspect *at) {
+    if (!bali_problems_count(&t->problems, c->cuts ? BALI_BAD_NUMBER : BALI_BAD_LABEL, c->variable)) return;
     /* With every record on a line of its own the line tells the record. */
     bool obvious = at->line == t->header.line + 1 + t->place;
     bali_bad_label label = {.domain = t->domain, .variable = c->variable, .text = text, .length = length,
                             .record = obvious ? 0 : t->place + 1, .redact = t->redact};
     bali_phrase phrase = {0};
-    bali_say_bad_label(&label, &phrase);
+    if (c->cuts) bali_say_bad_number(&label, &phrase);
+    else bali_say_bad_label(&label, &phrase);
     bal_error problem = {0};
-    (void)bal_error_set(&problem, BAL_ERR_DATA, "unknown-label", "%s", phrase.text);
+    (void)bal_error_set(&problem, BAL_ERR_DATA, c->cuts ? "bad-number-cell" : "unknown-label", "%s", phrase.text);
     place_error(t, &problem, at->line, at->column, c->name);
     bali_problems_tell(&t->problems, &problem);
 }
@@ -43,13 +45,12 @@ static void report_label(bali_table_reader *t, const bali_table_column *c, const
 static void report_missing(bali_table_reader *t, const bali_table_column *c) {
     t->missing[c->variable]++;
     t->has_missing = true;
-    if (t->policy == BAL_MISSING_DROP || !bali_problems_count(&t->problems, BALI_MISSING_CELL, c->variable)) return;
+    if (t->policy != BAL_MISSING_STOP || !bali_problems_count(&t->problems, BALI_MISSING_CELL, c->variable)) return;
     size_t line, column;
     bal_error problem = {0};
     bali_phrase phrase = {0};
-    bali_phrase_text(&phrase, c->name, c->name_length);
-    (void)bal_error_set(&problem, BAL_ERR_DATA, "missing-cells", "%s is missing here; fill it in, or see --missing",
-                        phrase.text);
+    bali_phrase_text(&phrase, c->name, strlen(c->name));
+    (void)bal_error_set(&problem, BAL_ERR_DATA, "missing-cells", "%s is missing here; fill it in, or see --missing", phrase.text);
     cell_place(t, &line, &column);
     place_error(t, &problem, line, column, c->name);
     bali_problems_tell(&t->problems, &problem);
@@ -67,7 +68,7 @@ static void report_header(bali_table_reader *t) {
 /* A byte order mark may stand before the name: that of a second file joined to the first. */
 static bool is_name(const bali_table_column *c, const bali_csv_cell *cell) {
     size_t skip = cell->length >= 3 && memcmp(cell->text, "\xEF\xBB\xBF", 3) == 0 ? 3 : 0;
-    return cell->length - skip == c->name_length && memcmp(cell->text + skip, c->name, c->name_length) == 0;
+    return cell->length - skip == c->heading_length && memcmp(cell->text + skip, c->heading, c->heading_length) == 0;
 }
 
 /* The record is no second header after all: what was put aside is reported. The columns before this one all hold their
@@ -76,8 +77,8 @@ static void report_suspects(bali_table_reader *t, const bali_table_column *c) {
     t->alike = false;
     for (size_t i = 0, s = 0; t->n_suspects > 0 && &t->columns.columns[i] != c; i++) {
         const bali_table_column *other = &t->columns.columns[i];
-        if (!other->name_unknown) continue;
-        report_label(t, other, other->name, other->name_length, &t->suspects[s]);
+        if (!other->heading_unknown) continue;
+        report_text(t, other, other->heading, other->heading_length, &t->suspects[s]);
         if (s + 1 < BALI_MOST_TOLD) s++; /* later ones are only counted */
     }
     t->n_suspects = 0;
@@ -87,7 +88,7 @@ static void take_unknown(bali_table_reader *t, const bali_table_column *c, const
     bali_table_suspect at;
     if (!t->alike) {
         cell_place(t, &at.line, &at.column);
-        report_label(t, c, cell->text, cell->length, &at);
+        report_text(t, c, cell->text, cell->length, &at);
         return;
     }
     if (t->n_suspects < BALI_MOST_TOLD) {
@@ -106,9 +107,8 @@ static void note_contested(bali_table_reader *t, bali_table_column *c, const bal
     bali_phrase phrase = {0};
     bali_phrase_quote(&phrase, cell->text, cell->length);
     bali_phrase_add(&phrase, " is an outcome of ");
-    bali_phrase_text(&phrase, c->name, c->name_length);
-    bali_phrase_add(&phrase, ", so it is not taken as a missing cell there");
-    (void)bal_error_set(&note, BAL_ERR_DATA, "outcome-not-missing", "%s", phrase.text);
+    bali_phrase_text(&phrase, c->name, strlen(c->name));
+    (void)bal_error_set(&note, BAL_ERR_DATA, "outcome-not-missing", "%s, so it is not taken as a missing cell there", phrase.text);
     cell_place(t, &line, &column);
     place_error(t, &note, line, column, c->name);
     tell(t, BAL_NOTE, &note);
@@ -122,6 +122,41 @@ static void take_cell(bali_table_reader *t, bali_table_column *c, const bali_csv
     else if (c->contested) note_contested(t, c, cell);
     if (t->columns.width == 1) ((uint8_t *)c->codes)[t->n] = (uint8_t)code;
     else ((uint16_t *)c->codes)[t->n] = (uint16_t)code;
+}
+
+static void report_weight(bali_table_reader *t, const char *text, size_t length, const bali_table_suspect *at) {
+    if (!bali_problems_count(&t->problems, BALI_BAD_WEIGHT, BAL_NONE)) return;
+    bal_error problem = {0};
+    bali_phrase phrase = {0};
+    bali_say_bad_weight(text, length, t->redact, &phrase);
+    (void)bal_error_set(&problem, BAL_ERR_DATA, "bad-weight", "%s", phrase.text);
+    place_error(t, &problem, at->line, at->column, t->header.names[t->header.weight]);
+    bali_problems_tell(&t->problems, &problem);
+}
+
+static void take_weight(bali_table_reader *t, const bali_csv_cell *cell) {
+    const char *name = t->header.names[t->header.weight];
+    if (bali_weight_read(cell->text, cell->length, &t->weight)) return;
+    t->weight = 0;
+    cell_place(t, &t->weight_at.line, &t->weight_at.column);
+    t->weight_is_name = cell->length == strlen(name) && memcmp(cell->text, name, cell->length) == 0;
+    if (!t->weight_is_name) report_weight(t, cell->text, cell->length, &t->weight_at);
+}
+
+/* A record without a label belongs to no fold. What is missing elsewhere is missing here, unless it is an outcome in this column. */
+static void take_group(bali_table_reader *t, const bali_csv_cell *cell) {
+    const bali_table_column *c = t->columns.by_place[t->header.group];
+    bool missing = bali_table_columns_missing(&t->columns, cell);
+    if (missing && cell->length > 0 && c) missing = bali_table_columns_code(&t->columns, c, cell) >= BALI_MISSING;
+    bali_text_clear(&t->group);
+    bali_text_add(&t->group, cell->text, cell->length);
+    if (!missing || !bali_problems_count(&t->problems, BALI_MISSING_GROUP, BAL_NONE)) return;
+    size_t line, column;
+    bal_error problem = {0};
+    (void)bal_error_set(&problem, BAL_ERR_DATA, "missing-group", "the label of the fold is missing here; fill it in, or remove the record");
+    cell_place(t, &line, &column);
+    place_error(t, &problem, line, column, t->header.names[t->header.group]);
+    bali_problems_tell(&t->problems, &problem);
 }
 
 /* Adds the column's name to what the reader of cells says. */
@@ -191,6 +226,20 @@ static void give_blank_line(bali_table_reader *t, bali_csv_cell *cell) {
     t->record_line = t->blank_line++;
 }
 
+/* Whether empty lines at the end may be records: cells of a single column in which the empty cell is an outcome. */
+static bool may_be_records(const bali_table_reader *t) {
+    const bali_table_column *only = t->header.n_columns == 1 ? t->columns.by_place[0] : NULL;
+    return t->blank_lines > 0 && only && only->empty != BALI_MISSING;
+}
+
+static bal_status blank_end(bali_table_reader *t) {
+    bal_status status = bal_error_set(&t->failure, BAL_ERR_SYNTAX, "blank-line",
+                                      "blank lines end the table, and an empty cell is an outcome here; remove them, or write \"\" for "
+                                      "records");
+    place_error(t, &t->failure, t->blank_line, 1, NULL);
+    return status;
+}
+
 /* Gives the first cell of the next record; its text is NULL at the end. Empty lines at the end are nothing. */
 static bal_status begin_record(bali_table_reader *t, bali_csv_cell *cell) {
     size_t column;
@@ -204,7 +253,7 @@ static bal_status begin_record(bali_table_reader *t, bali_csv_cell *cell) {
     for (bool blank = !held; blank;) {
         bal_status status = bali_csv_next(t->csv, cell, &t->failure);
         if (status != BAL_OK) return broken_cell(t, 0);
-        if (!cell->text) return BAL_OK;
+        if (!cell->text) return may_be_records(t) ? blank_end(t) : BAL_OK;
         blank = is_blank_line(cell);
         if (!blank) break;
         bali_csv_place(t->csv, &t->record_line, &column);
@@ -230,6 +279,8 @@ bal_status bali_table_read_record(bali_table_reader *t, size_t n) {
     t->has_missing = false;
     t->alike = true;
     t->n_suspects = 0;
+    t->weight = 1;
+    t->weight_is_name = false;
     t->is_comment = cell.length > 0 && cell.text[0] == '#' && !cell.quoted;
     const bali_table_column *first = t->columns.by_place[0];
     if (t->is_comment && first && bali_table_columns_code(&t->columns, first, &cell) == BALI_UNKNOWN)
@@ -237,15 +288,20 @@ bal_status bali_table_read_record(bali_table_reader *t, size_t n) {
     for (size_t c = 0;; c++) {
         if (c == t->header.n_columns) return long_record(t, &cell);
         if (t->columns.by_place[c]) take_cell(t, t->columns.by_place[c], &cell);
+        if (c == t->header.weight) take_weight(t, &cell);
+        if (c == t->header.group) take_group(t, &cell);
         if (cell.ends_record && c + 1 < t->header.n_columns) return short_record(t, c + 1);
         if (cell.ends_record) break;
         status = bali_csv_next(t->csv, &cell, &t->failure);
         if (status != BAL_OK) return broken_cell(t, c + 1);
     }
-    if (t->alike && t->n_suspects > 0) report_header(t);
+    bool is_header = t->alike && t->n_suspects > 0;
+    const char *weight = t->weight_is_name ? t->header.names[t->header.weight] : NULL;
+    if (is_header) report_header(t);
+    else if (weight) report_weight(t, weight, strlen(weight), &t->weight_at);
     t->incomplete += t->has_missing;
     t->place++;
-    return BAL_OK;
+    return t->group.failed ? bali_out_of_memory(&t->failure) : BAL_OK;
 }
 
 /* Steps over the first record, which was read before. */
@@ -269,18 +325,43 @@ bal_status bali_table_reader_rewind(bali_table_reader *t) {
     return status;
 }
 
-size_t bali_table_reader_line(const bali_table_reader *t, const char *path, uint64_t place) {
-    if (!bali_csv_can_rewind(t->csv) || strcmp(path, "-") == 0) return 0;
-    bali_csv *csv = NULL;
+/* Reads one record for its line and its weight. *line is 0 at the end. */
+static bal_status read_weight(bali_csv *csv, size_t weight_column, size_t *line, double *weight) {
     bali_csv_cell cell;
-    size_t line = 0, column;
+    size_t column;
+    *line = 0;
+    *weight = 1;
+    for (size_t c = 0;; c++) {
+        bal_status status = bali_csv_next(csv, &cell, NULL);
+        if (status != BAL_OK || !cell.text) return status;
+        if (c == 0) bali_csv_place(csv, line, &column);
+        if (c == weight_column && !bali_weight_read(cell.text, cell.length, weight)) *weight = 0;
+        if (cell.ends_record) return BAL_OK;
+    }
+}
+
+void bali_table_reader_find(const bali_table_reader *t, const char *path, uint64_t place, size_t *record, size_t *line) {
+    bali_csv *csv = NULL;
     bali_csv_options options = {.delimiter = bali_csv_delimiter(t->csv)};
+    size_t n = 0, at = 0;
+    uint64_t end = 0;
+    double weight;
+    *line = 0;
+    *record = t->header.weight == BAL_NONE ? (size_t)place + 1 : 0;
+    if (!bali_csv_can_rewind(t->csv) || strcmp(path, "-") == 0) return;
     bal_status status = bali_csv_open(path, &options, &csv, NULL);
-    for (uint64_t i = 0; i <= place && status == BAL_OK; i++) status = skip_record(csv, NULL);
-    if (status == BAL_OK) status = bali_csv_next(csv, &cell, NULL);
-    if (status == BAL_OK && cell.text) bali_csv_place(csv, &line, &column);
+    if (status == BAL_OK) status = skip_record(csv, NULL);
+    while (status == BAL_OK && end <= place) {
+        status = read_weight(csv, t->header.weight, &at, &weight);
+        if (at == 0) break;
+        end += bali_weight_places(weight);
+        n++;
+    }
+    if (status == BAL_OK && end > place) {
+        *record = n;
+        *line = at;
+    }
     bali_csv_close(csv);
-    return line;
 }
 
 bal_status bali_table_reader_open(bali_table_reader *t, const bal_domain *domain, const char *path,
@@ -288,21 +369,28 @@ bal_status bali_table_reader_open(bali_table_reader *t, const bal_domain *domain
     t->domain = domain;
     t->policy = options->missing;
     t->redact = options->redact;
+    t->header.weight = t->header.group = BAL_NONE;
     if (options->notices) t->notices = *options->notices;
+    if (options->fold_column && !options->groups)
+        return bal_error_set(err, BAL_ERR_ARGUMENT, "option-mismatch",
+                             "a fold column needs groups to number its labels in; make them with bal_groups_create");
     bali_csv_options csv_options = {.delimiter = options->delimiter, .redact = options->redact};
-    bal_status status = bali_csv_open(path, &csv_options, &t->csv, err);
-    if (status == BAL_OK) status = bali_table_header_read(&t->header, t->csv, domain, options, err);
+    bal_status status = bali_column_rules_read(&t->rules, domain, options->document, err);
+    if (status == BAL_OK) status = bali_csv_open(path, &csv_options, &t->csv, err);
+    if (status == BAL_OK) status = bali_table_header_read(&t->header, t->csv, domain, &t->rules, options, err);
+    if (status == BAL_OK) status = bali_table_columns_create(&t->columns, domain, &t->header, &t->rules, options, err);
     if (status != BAL_OK) return status;
     t->missing = bali_allocate(bal_domain_variables(domain), sizeof *t->missing);
-    bool made = t->missing && bali_table_columns_create(&t->columns, domain, &t->header, options) &&
-                bali_problems_create(&t->problems, domain, options->notices);
-    return made ? BAL_OK : bali_out_of_memory(err);
+    if (!t->missing) return bali_out_of_memory(err);
+    return bali_problems_create(&t->problems, domain, options->notices) ? BAL_OK : bali_out_of_memory(err);
 }
 
 void bali_table_reader_close(bali_table_reader *t) {
     bali_csv_close(t->csv);
     bali_table_header_free(&t->header);
     bali_table_columns_free(&t->columns);
+    bali_column_rules_free(&t->rules);
+    bali_text_free(&t->group);
     bali_problems_free(&t->problems);
     bali_free(t->missing);
 }

@@ -6,6 +6,7 @@
 #ifndef FORMATS_TABLE_READER_H
 #define FORMATS_TABLE_READER_H
 
+#include "base/text.h"
 #include "formats/table_columns.h"
 #include "formats/table_problems.h"
 
@@ -21,6 +22,7 @@ typedef struct bali_table_reader {
     bal_notices notices;
     bal_missing policy;
     bool redact;
+    bali_column_rules rules;
     bali_table_header header;
     bali_table_columns columns;
     bali_problems problems;
@@ -35,6 +37,10 @@ typedef struct bali_table_reader {
     size_t record_line;
     size_t n; /* where its codes go */
     bool has_missing, is_comment;
+    double weight;        /* 1 without a column of weights */
+    bool weight_is_name;  /* its text is the name of the column: a bad weight, unless the record is a second header */
+    bali_table_suspect weight_at;
+    bali_text group;      /* its label in the fold column */
     bool alike;                                   /* every wanted cell so far is the name of its column */
     bali_table_suspect suspects[BALI_MOST_TOLD];  /* the first of those that are no outcomes */
     size_t n_suspects;
@@ -58,8 +64,9 @@ BAL_MUST_CHECK bal_status bali_table_read_record(bali_table_reader *reader, size
 
 /** Back to the first record. Fails: as bali_csv_rewind, in reader->failure. */
 BAL_MUST_CHECK bal_status bali_table_reader_rewind(bali_table_reader *reader);
-/** The line on which a record begins, found by reading the file once more beside the pass; 0 when that cannot be. */
-size_t bali_table_reader_line(const bali_table_reader *reader, const char *path, uint64_t place);
+/** The record at a place, from 1, and the line on which it begins, found by reading the file once more beside the pass. What cannot be
+ *  found is 0. */
+void bali_table_reader_find(const bali_table_reader *reader, const char *path, uint64_t place, size_t *record, size_t *line);
 void bali_table_reader_close(bali_table_reader *reader);
 
 #endif

@@ -351,6 +351,7 @@ static bal_status take_property(reader *r, bal_error *err) {
     case DEFINITION: *p = (bali_draft_property){.of = BAL_OF_DEFINITION, .owner = draft->n_definitions - 1}; break;
     default: *p = (bali_draft_property){.of = BAL_OF_NETWORK}; break;
     }
+    p->at = r->at[r->depth];
     p->length = r->text.length;
     p->text = bali_duplicate(bali_text_string(&r->text), p->length);
     if (!p->text) return bali_out_of_memory(err);

@@ -7,6 +7,7 @@ import gzip
 import io
 import itertools
 import zipfile
+import zlib
 
 CLINIC = {"smoker": ["no", "yes"], "stage": ["1", "2", "1-2"], "place": ["home", "ward", "café"]}
 HEADER = "smoker,stage,place\n"
@@ -54,9 +55,23 @@ def zipped():
 def gzip_bomb():
     held = io.BytesIO()
     with gzip.GzipFile(fileobj=held, mode="wb", mtime=0) as file:
+        file.write(HEADER.encode())
         for _ in range(64):
             file.write(b"no,1,home\n" * 100000)
     return held.getvalue()
+
+
+def gzip_zeros():
+    """Nothing but one label for ever, as a gzip file that grows a thousandfold: made by zlib as it is asked for."""
+    packer = zlib.compressobj(9, zlib.DEFLATED, 31)
+    yield packer.compress(HEADER.encode())
+    while True:
+        yield packer.compress(b"no,1,home\n" * 100000)
+
+
+def weighted(*weights):
+    """The plain table's first record once for each weight."""
+    return "weight," + HEADER + "".join("%s,no,1,home\n" % weight for weight in weights)
 
 
 def counted_columns(n, width=0):
@@ -92,6 +107,10 @@ def good():
     yield Case("blanks around header and cells", PLAIN.replace("smoker", " smoker\t").replace(",2,", " , 2 ,"), same_as="plain",
                options=["--delimiter", ","])
     yield Case("all quoted", "\n".join(",".join('"%s"' % c for c in line.split(",")) for line in lines[:-1]) + "\n", same_as="plain")
+    yield Case("gzip", gzip.compress(PLAIN.encode(), mtime=0), same_as="plain")
+    yield Case("gzip in two members", gzip.compress(PLAIN[:30].encode()) + gzip.compress(PLAIN[30:].encode()), same_as="plain")
+    yield Case("gzip with a name and a tab", gzip.compress(PLAIN.replace(",", "\t").encode()), same_as="plain", file_name="table.tsv.gz")
+    yield Case("weights", weighted(2, "0.5", "1e3", 0), options=["--weight", "weight"])
     yield Case("semicolons asked for", PLAIN.replace(",", ";"), options=["--delimiter", ";"], same_as="plain")
     yield Case("tabs found in the header", PLAIN.replace(",", "\t"), same_as="plain")
     yield Case("tabs by the file's ending", "smoker\nno\nyes\n", variables={"smoker": ["no", "yes"]}, file_name="table.tsv")
@@ -147,8 +166,15 @@ def kinds():
         yield Case(name, PLAIN.encode(encoding), 1, ["looks like UTF-", "iconv -f UTF-"], "1:1", "encoding")
     yield Case("PDF", b"%PDF-1.7\n%\xe2\xe3\xcf\xd3\n", 1, ["PDF"], "1:1", "not-a-table")
     yield Case("spreadsheet", zipped(), 1, ["spreadsheet", "CSV in UTF-8"], "1:1", "not-a-table")
-    yield Case("gzip", gzip.compress(PLAIN.encode(), mtime=0), 1, ["gzip", "decompress"], "1:1", "not-a-table")
-    yield Case("gzip bomb", gzip_bomb(), 1, ["gzip", "decompress"], "1:1", "not-a-table")
+    packed = gzip.compress(PLAIN.encode(), mtime=0)
+    yield Case("gzip in gzip", gzip.compress(packed), 1, ["gzip data inside gzip data"], "1:1", "not-a-table")
+    yield Case("gzip bomb", gzip_bomb(), 1, ["more than 200 times"], None, "gzip-ratio")
+    yield Case("gzip bomb for ever", gzip_zeros, 1, ["more than 200 times"], None, "gzip-ratio", most_read=4 * MEBIBYTE)
+    yield Case("gzip cut short", packed[:-9], 1, ["end too early", "at byte %d" % (len(packed) - 9)], None, "bad-gzip")
+    yield Case("gzip cut in its header", packed[:5], 1, ["end too early"], None, "bad-gzip")
+    yield Case("gzip with a wrong sum", packed[:-8] + b"\0\0\0\0" + packed[-4:], 1, ["damaged"], None, "bad-gzip")
+    yield Case("gzip with more behind it", packed + b"no,1,home\n", 1, ["something else stands behind"], None, "bad-gzip")
+    yield Case("gzip of a broken table", gzip.compress((PLAIN + "no,1\n").encode()), 1, ["found 2 cells"], "5", "ragged-record")
     for name, data, words in (
             ("Latin-1", b"no,1,caf\xe9\n", ["byte 0xE9", "iconv"]), ("overlong form", b"no,1,\xc0\xaf\n", ["bytes 0xC0 0xAF"]),
             ("surrogate", b"no,1,\xed\xa0\x80\n", ["0xED 0xA0 0x80"]), ("beyond U+10FFFF", b"no,1,\xf4\x90\x80\x80\n", ["0xF4 0x90 0x80 0x80"]),
@@ -212,6 +238,21 @@ def cells():
     yield Case("a long wrong label is cut", first(HEADER + "no,1,", lambda: [b"lemon " * 50000, b"\n"]), 1, ["..."], "2:6", "unknown-label")
 
 
+def weights():
+    """Weights that are none, each placed, and tables in which nothing counts."""
+    asked = ["--weight", "weight"]
+    for cell in ("-1", "nan", "inf", "1e400", "1_000", "", '"1,5"', "1e16", "NA", "0x10", "1.000.000"):
+        yield Case("weight %s" % (cell or "missing"), weighted(1, cell), 1, ["weight"], "3:1", "bad-weight", asked)
+    yield Case("decimal comma in a weight", weighted('"1,5"'), 1, ["use a decimal point"], "2:1", "bad-weight", asked)
+    yield Case("hundreds of bad weights", weighted(*["x"] * 300), 1, ["and 290 more bad weights"], "2:1", "bad-weight", asked)
+    yield Case("all weights 0", weighted(0, 0, 0), 1, ["no record has a weight above 0"], None, "no-weight", asked)
+    yield Case("weights beyond exact counts", weighted(*["1e15"] * 10), 1, ["2^53"], "11", "bad-weight", asked)
+    yield Case("no such column of weights", weighted(1), 1, ['did you mean "weight"?'], "1", "missing-column", ["--weight", "weigth"])
+    yield Case("no weight's text is shown", weighted("Jane"), 1, ["the text is not a weight"], "2:1", "bad-weight", asked + ["--redact"],
+               absent=["Jane"])
+    yield Case("header repeated with weights", weighted(1) + weighted(1), 1, ["line 3 repeats the header"], "3:1", "repeated-header", asked)
+
+
 def endless():
     """Input without an end: piped in, and left as soon as something is wrong."""
     yield Case("zeros for ever", repeat(b"\0" * 65536), 1, ["NUL"], "1:1", "control-character", most_read=4 * MEBIBYTE)
@@ -227,4 +268,4 @@ def endless():
 
 
 def cases():
-    return list(itertools.chain(good(), headers(), kinds(), structure(), cells(), endless()))
+    return list(itertools.chain(good(), headers(), kinds(), structure(), cells(), weights(), endless()))

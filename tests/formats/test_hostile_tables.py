@@ -91,7 +91,7 @@ class Tester:
 
     def comparable(self, run):
         """A page without what names the file: the driver ends with the file's size and digest."""
-        lines = run.page.replace("standard input", "table.csv").split("\n")
+        lines = run.page.replace("standard input", "table.csv").replace("table.tsv.gz", "table.csv").split("\n")
         return "\n".join(lines[:-2] if self.is_driver else lines)
 
     def check(self, case):
@@ -109,7 +109,7 @@ class Tester:
         if case.exit == 0 and refusals:
             wrong.append("a refusal without a status")
         if case.exit == 1:
-            begin = name + ":" + case.place
+            begin = name + (":" + case.place if case.place else "")
             if not refusals or not refusals[0].startswith(begin + ": "):
                 wrong.append("the first refusal is not at %s" % begin)
             if not refusals or not refusals[0].endswith("[%s]" % case.code):
