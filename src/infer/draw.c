@@ -76,7 +76,8 @@ static bal_status draw_rewind(bal_source *source, bal_error *err) {
 }
 
 static void draw_summary(const bal_source *source, bal_source_summary *out) {
-    out->records = ((const draw *)source)->at;
+    out->records = out->places = ((const draw *)source)->at;
+    out->weight = (double)out->records;
 }
 
 static void draw_free(bal_source *source) {

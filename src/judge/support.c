@@ -4,6 +4,7 @@
 #include "base/memory.h"
 #include "learn/indexing.h"
 #include "model/cells.h"
+#include "model/expanded.h"
 #include "model/domain.h"
 
 #include <math.h>
@@ -58,10 +59,27 @@ static bal_status look_at_block(alone *a, const bal_block *block, bal_error *err
     return BAL_OK;
 }
 
+/* Goes over the records, each as often as its weight says. */
+static bal_status look_at_records(alone *a, bal_source *source, bal_error *err) {
+    bal_source *records = NULL;
+    bal_status status = bali_expanded_open(source, &records, err);
+    if (status == BAL_OK) status = bal_source_rewind(records, err);
+    while (status == BAL_OK) {
+        bal_block block;
+        status = bal_source_next(records, &block, err);
+        if (status != BAL_OK || block.n_records == 0) break;
+        status = look_at_block(a, &block, err);
+    }
+    bal_source_free(records);
+    return status;
+}
+
 bal_status bal_support_measure(const bal_cells *counts, bal_source *source, bal_support *out, double *row_shares, double *cell_shares,
                                bal_error *err) {
     const bal_network *network = bal_cells_network(counts);
     alone a = {.network = network};
+    bal_source_summary summary = {0};
+    if (source) bal_source_summary_get(source, &summary);
     if (source && !bali_domain_equal(bal_network_domain(network), bal_source_domain(source)))
         return bal_error_set(err, BAL_ERR_ARGUMENT, "other-network",
                              "the records follow other variables than the counts; use records of the same variables");
@@ -70,13 +88,7 @@ bal_status bal_support_measure(const bal_cells *counts, bal_source *source, bal_
     for (size_t v = 0; v < bal_network_variables(network) && status == BAL_OK; v++)
         mark_cells(counts, v, marks + bal_network_offset(network, v), row_shares, cell_shares);
     a.marks = marks;
-    if (status == BAL_OK && source) status = bal_source_rewind(source, err);
-    while (status == BAL_OK && source) {
-        bal_block block;
-        status = bal_source_next(source, &block, err);
-        if (status != BAL_OK || block.n_records == 0) break;
-        status = look_at_block(&a, &block, err);
-    }
+    if (status == BAL_OK && source && !summary.fractional) status = look_at_records(&a, source, err);
     if (status == BAL_OK) {
         out->row_share = a.records ? (double)a.in_row / (double)a.records : NAN;
         out->cell_share = a.records ? (double)a.in_cell / (double)a.records : NAN;

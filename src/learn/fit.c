@@ -4,14 +4,18 @@
 #include "base/memory.h"
 #include "ballast/posterior.h"
 #include "ballast/tally.h"
+#include "model/cells.h"
+
+#include <math.h>
 
 static bal_status score_families(bal_fit *fit, bal_error *err) {
     size_t n = bal_network_variables(bal_cells_network(fit->counts));
+    bool whole = bali_cells_are_whole(fit->counts); /* else there is no record to leave out */
     bali_sum marginal = {0}, left_out = {0};
     for (size_t v = 0; v < n; v++) {
-        double score;
+        double score = NAN;
         bal_status status = bal_log_marginal_likelihood(fit->pseudo_counts, fit->counts, v, &fit->family_scores[v], err);
-        if (status == BAL_OK) status = bal_leave_one_out(fit->pseudo_counts, fit->counts, v, &score, err);
+        if (status == BAL_OK && whole) status = bal_leave_one_out(fit->pseudo_counts, fit->counts, v, &score, err);
         if (status != BAL_OK) return status;
         bali_sum_add(&marginal, fit->family_scores[v]);
         bali_sum_add(&left_out, score);
@@ -59,6 +63,7 @@ static bool options_of(bal_prior_kind kind, const bal_prior_options *expert, bal
     *options = bal_prior_options_defaults();
     options->kind = kind;
     if (kind != BAL_PRIOR_BDEU) options->choice = BAL_STRENGTH_GIVEN;
+    if (kind == BAL_PRIOR_CARRIED) return false; /* there is one only where it is asked for */
     if (kind != BAL_PRIOR_EXPERT) return true;
     if (!expert) return false;
     options->expert = expert->expert;

@@ -12,7 +12,7 @@ bal_prior_options bal_prior_options_defaults(void) {
 }
 
 const char *bal_prior_kind_name(bal_prior_kind kind) {
-    static const char *const names[] = {"bdeu", "k2", "jeffreys", "expert"};
+    static const char *const names[] = {"bdeu", "k2", "jeffreys", "expert", "carried"};
     return names[kind];
 }
 
@@ -37,7 +37,7 @@ static bal_status check_expert(const bal_network *network, const bal_document *e
         return bal_error_set(err, BAL_ERR_DATA, "other-network", "the expert's tables belong to another network; give tables of this one");
     if (bal_document_cells(expert, BAL_CARRIED_PSEUDO_COUNTS))
         return bal_error_set(err, BAL_ERR_DATA, "fitted-tables",
-                             "the tables were fitted to data already, so they are no expert's; give the expert's own file");
+                             "the tables were fitted to data already, so they are no expert's; give the expert's own file, or --prior carried");
     return BAL_OK;
 }
 
@@ -75,6 +75,40 @@ static bal_status weigh_expert(bal_prior *prior, const bal_prior_options *option
     return status;
 }
 
+/* A row without any pseudo-count says nothing of its outcomes, and without records it would have no mean. */
+static bal_status check_carried(const bal_cells *pseudo_counts, bal_error *err) {
+    const bal_network *network = bal_cells_network(pseudo_counts);
+    for (size_t v = 0; v < bal_network_variables(network); v++) {
+        size_t r = bal_network_outcomes(network, v), rows = bal_network_rows(network, v);
+        const char *name = bal_domain_name(bal_network_domain(network), v);
+        const double *alpha = bal_cells_family(pseudo_counts, v);
+        for (size_t row = 0; row < rows; row++, alpha += r) {
+            double total = bali_row_sum(alpha, r);
+            if (total > 0 && isfinite(total)) continue;
+            bal_status status = bal_error_set(err, BAL_ERR_DATA, "no-pseudo-counts",
+                                              "the pseudo-counts of row %zu of %s sum to %g, so they are no prior; fit anew from the counts",
+                                              row + 1, name, total);
+            bal_error_context(err, 0, name);
+            return status;
+        }
+    }
+    return BAL_OK;
+}
+
+static bal_status take_carried(bal_prior *prior, const bal_document *carried, bal_error *err) {
+    const bal_cells *pseudo_counts = carried ? bal_document_cells(carried, BAL_CARRIED_PSEUDO_COUNTS) : NULL;
+    if (!pseudo_counts)
+        return bal_error_set(err, BAL_ERR_ARGUMENT, "no-pseudo-counts",
+                             "the carried prior needs the pseudo-counts of an earlier fit; give a file that ballast fit wrote");
+    if (!bal_network_equal(bal_document_network(carried), prior->network))
+        return bal_error_set(err, BAL_ERR_DATA, "other-network", "the carried prior belongs to another network; give the fit of this one");
+    bal_status status = check_carried(pseudo_counts, err);
+    if (status != BAL_OK) return status;
+    prior->choice = BAL_STRENGTH_GIVEN;
+    prior->strength = 1;
+    return bal_cells_copy(pseudo_counts, &prior->units, err);
+}
+
 bal_status bal_prior_create(const bal_network *network, const bal_prior_options *options, bal_prior **out, bal_error *err) {
     *out = NULL;
     bal_status status = check_options(options, err);
@@ -86,6 +120,7 @@ bal_status bal_prior_create(const bal_network *network, const bal_prior_options 
     prior->choice = options->choice;
     prior->strength = options->strength;
     if (prior->kind == BAL_PRIOR_EXPERT) status = weigh_expert(prior, options, err);
+    if (prior->kind == BAL_PRIOR_CARRIED) status = take_carried(prior, options->carried, err);
     if (status == BAL_OK) {
         *out = prior;
     } else {

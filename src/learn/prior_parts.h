@@ -9,7 +9,7 @@ struct bal_prior {
     bal_prior_kind kind;
     bal_strength_choice choice;
     double strength;  /* the given one */
-    bal_cells *units; /* EXPERT: pseudo-counts at strength 1; NULL for the others, whose families are constant */
+    bal_cells *units; /* EXPERT, CARRIED: pseudo-counts at strength 1; NULL for the others, whose families are constant */
 };
 
 /** Pseudo-count of every cell of a family at strength 1, for priors without units. */

@@ -118,11 +118,18 @@ static double best_log_strength(score_terms *s, int *at_end, bool *found) {
     return best;
 }
 
+static bal_status refuse_fractions(bal_error *err) {
+    return bal_error_set(err, BAL_ERR_DATA, "fractional-weight",
+                         "some counts are not whole, so no strength can be chosen by leaving records out one by one; "
+                         "choose it by the marginal likelihood (auto), or give it");
+}
+
 bal_status bal_prior_settle(const bal_prior *prior, const bal_cells *counts, bal_strength *strength, bal_error *err) {
     *strength = (bal_strength){.value = prior->strength};
     if (prior->choice == BAL_STRENGTH_GIVEN) return BAL_OK;
     strength->value = 1;
     if (!counts) return BAL_OK;
+    if (prior->choice == BAL_STRENGTH_BY_LEAVE_ONE_OUT && !bali_cells_are_whole(counts)) return refuse_fractions(err);
     score_terms s = {.leave_one_out = prior->choice == BAL_STRENGTH_BY_LEAVE_ONE_OUT};
     bal_status status = collect_terms(prior, counts, &s, err);
     if (status == BAL_OK && s.n_terms > 0) {

@@ -41,7 +41,7 @@ static size_t find_in_block(const bal_prior *prior, const bal_block *block, uint
         const double *unit = bal_cells_family(prior->units, v);
         bali_index_family(prior->network, v, block, cells);
         for (size_t t = 0; t < first; t++) {
-            if (cells[t] == BALI_NO_CELL || unit[cells[t]] > 0) continue;
+            if (cells[t] == BALI_NO_CELL || unit[cells[t]] > 0 || (block->weights && block->weights[t] <= 0)) continue;
             first = t;
             *variable = v;
             *cell = cells[t];

@@ -6,6 +6,7 @@
 #include "model/document.h"
 #include "support/fixtures.h"
 
+#include <math.h>
 #include <stdlib.h>
 #include <string.h>
 
@@ -112,6 +113,81 @@ START_TEST(a_structural_zero_stays_zero) {
 }
 END_TEST
 
+/* Counts that are not whole hold no record to leave out: every other number is there, and a strength cannot be chosen that way. */
+START_TEST(fractions_of_records_cannot_be_left_out) {
+    random_case c;
+    set_up(&c, _i);
+    bal_prior *prior = open_prior(c.network, BAL_PRIOR_BDEU, BAL_STRENGTH_BY_MARGINAL_LIKELIHOOD);
+    bal_prior *by_leave_one_out = open_prior(c.network, BAL_PRIOR_BDEU, BAL_STRENGTH_BY_LEAVE_ONE_OUT);
+    bal_cells_edit(c.counts, 0)[0] += _i % 2 ? 0x1p-32 : 0.5;
+    bal_fit *fit = fit_of(prior, c.counts);
+    ck_assert(isnan(fit->scores.leave_one_out) && isfinite(fit->scores.log_marginal_likelihood));
+    double sum = 0;
+    for (size_t v = 0; v < bal_network_variables(c.network); v++) sum += fit->family_scores[v];
+    ck_assert(near(fit->scores.log_marginal_likelihood, sum, 1e-13));
+    bal_fit_free(fit);
+
+    bal_other_prior others[BAL_PRIOR_KINDS];
+    bal_prior_options options = {.kind = BAL_PRIOR_EXPERT, .strength = 1, .expert = c.expert, .row_ess = 9};
+    size_t n;
+    ck_assert_int_eq(bal_other_priors(c.network, c.counts, BAL_PRIOR_BDEU, &options, others, &n, NULL), BAL_OK);
+    ck_assert_uint_eq(n, 3);
+    for (size_t i = 0; i < n; i++) ck_assert(isnan(others[i].leave_one_out));
+
+    bal_error err = {0};
+    ck_assert_int_eq(bal_fit_create(by_leave_one_out, c.counts, &fit, &err), BAL_ERR_DATA);
+    ck_assert_str_eq(err.code, "fractional-weight");
+    ck_assert_ptr_null(fit);
+    bal_prior_free(prior);
+    bal_prior_free(by_leave_one_out);
+    tear_down(&c);
+}
+END_TEST
+
+/* The sum of ln (alpha + n) / (alpha_row + n_row) over records that come one after another: what each was given when it came. */
+static double one_step_predictions(const bal_network *network, const bal_cells *alpha, const bal_cells *earlier, const int *codes, size_t n_records) {
+    size_t n = bal_network_variables(network);
+    double sum = 0;
+    bal_cells *seen = equal_cells(network, 0);
+    bali_cells_assign(seen, earlier);
+    for (size_t i = 0; i < n_records; i++)
+        for (size_t v = 0; v < n; v++) {
+            size_t cell = cell_of(network, v, codes + i * n), r = bal_network_outcomes(network, v), row = cell / r * r;
+            const double *a = bal_cells_family(alpha, v);
+            double *count = bal_cells_edit(seen, v);
+            sum += log((a[cell] + count[cell]) / (bali_row_sum(a + row, r) + bali_row_sum(count + row, r)));
+            count[cell] += 1;
+        }
+    bal_cells_free(seen);
+    return sum;
+}
+
+/* New records given old ones: the difference of the two log marginal likelihoods under a carried prior (Dawid 1984), also where the
+ * old counts were halved (the power prior of Ibrahim & Chen 2000). Tables of old and new are those of one batch. */
+START_TEST(new_records_are_predicted_from_the_old) {
+    random_case c;
+    set_up(&c, _i);
+    dice d = dice_of(_i + 40);
+    int *codes = random_codes(&d, c.tables, 30, 0);
+    bal_cells *alpha = random_tables(&d, c.network, 0), *more = counts_of(c.network, codes, 30);
+    bal_prior *prior = carried_prior(alpha);
+    for (size_t c_at = 0; c_at < bal_network_cells(c.network) && _i % 2; c_at++) bali_cells_all(c.counts)[c_at] *= 0.5;
+    bal_fit *before = fit_of(prior, c.counts);
+    bali_cells_add(more, c.counts);
+    bal_fit *after = fit_of(prior, more);
+    double got = after->scores.log_marginal_likelihood - before->scores.log_marginal_likelihood;
+    ck_assert(near(got, one_step_predictions(c.network, alpha, c.counts, codes, 30), 1e-12));
+    ck_assert(same(after->pseudo_counts, alpha));
+    bal_fit_free(before);
+    bal_fit_free(after);
+    bal_prior_free(prior);
+    bal_cells_free(alpha);
+    bal_cells_free(more);
+    free(codes);
+    tear_down(&c);
+}
+END_TEST
+
 static bal_prior_options expert_options(const random_case *c, double row_ess) {
     return (bal_prior_options){.kind = BAL_PRIOR_EXPERT, .strength = 1, .expert = c->expert, .row_ess = row_ess};
 }
@@ -209,6 +285,8 @@ static Suite *suite(void) {
     tcase_add_loop_test(c, a_fit_is_its_parts, 1, 6);
     tcase_add_test(c, counts_the_prior_calls_impossible_are_refused);
     tcase_add_test(c, a_structural_zero_stays_zero);
+    tcase_add_loop_test(c, fractions_of_records_cannot_be_left_out, 1, 5);
+    tcase_add_loop_test(c, new_records_are_predicted_from_the_old, 1, 9);
     tcase_add_test(c, other_priors_are_fits_of_their_own);
     tcase_add_test(c, an_expert_who_cannot_serve_is_left_out);
     tcase_add_test(c, a_fit_survives_failing_allocations);

@@ -180,15 +180,107 @@ START_TEST(a_prior_says_what_it_is) {
     ck_assert_int_eq(bal_prior_choice(prior), BAL_STRENGTH_BY_LEAVE_ONE_OUT);
     bal_prior_free(prior);
     bal_prior_free(NULL);
-    static const char *const names[] = {"bdeu", "k2", "jeffreys", "expert"};
-    for (bal_prior_kind kind = BAL_PRIOR_BDEU; kind <= BAL_PRIOR_EXPERT; kind++)
-        ck_assert_str_eq(bal_prior_kind_name(kind), names[kind]);
+    static const char *const names[] = {"bdeu", "k2", "jeffreys", "expert", "carried"};
+    for (bal_prior_kind kind = BAL_PRIOR_BDEU; kind <= BAL_PRIOR_CARRIED; kind++) ck_assert_str_eq(bal_prior_kind_name(kind), names[kind]);
+}
+END_TEST
+
+/* ---- carried ---- */
+
+static const double earlier_counts[] = {0.25, 3, /**/ 0.5, 0, 1e-6, /**/ 7, 1e9, 0.125};
+
+static bal_document *fitted_document(const bal_network *network, const double *pseudo_counts) {
+    bal_document *document = expert_document(network, false);
+    bal_cells *cells = cells_of(network, pseudo_counts);
+    ck_assert_int_eq(bal_document_set_cells(document, BAL_CARRIED_PSEUDO_COUNTS, cells, NULL), BAL_OK);
+    bal_cells_free(cells);
+    return document;
+}
+
+/* They are the prior as they stand, whatever the options say of a strength and whatever the counts would ask for. */
+START_TEST(carried_pseudo_counts_are_the_prior) {
+    bal_network *network = network_of(expert_network);
+    bal_document *document = fitted_document(network, earlier_counts);
+    bal_cells *counts = cells_of(network, (const double[]){5, 50, 1, 0, 4, 0, 30, 20});
+    for (bal_strength_choice choice = BAL_STRENGTH_GIVEN; choice <= BAL_STRENGTH_BY_LEAVE_ONE_OUT; choice++) {
+        bal_prior_options options = {.kind = BAL_PRIOR_CARRIED, .choice = choice, .strength = 3, .carried = document};
+        bal_prior *prior = prior_of(network, &options);
+        bal_strength strength;
+        ck_assert_int_eq(bal_prior_kind_of(prior), BAL_PRIOR_CARRIED);
+        ck_assert_int_eq(bal_prior_choice(prior), BAL_STRENGTH_GIVEN);
+        ck_assert_int_eq(bal_prior_settle(prior, counts, &strength, NULL), BAL_OK);
+        ck_assert(strength.value == 1 && !strength.chosen);
+        bal_cells *alpha = filled(prior, network, strength.value);
+        ck_assert_mem_eq(bali_cells_values(alpha), earlier_counts, sizeof earlier_counts);
+        bal_cells_free(alpha);
+        bal_prior_free(prior);
+    }
+    bal_cells_free(counts);
+    bal_document_free(document);
+    bal_network_free(network);
+}
+END_TEST
+
+static const struct {
+    bool no_document, no_pseudo_counts, other_network;
+    double pseudo_counts[8];
+    bal_status status;
+    const char *code, *variable;
+} carried_refusals[] = {
+    {.no_document = true, .pseudo_counts = {1, 1, 1, 1, 1, 1, 1, 1}, .status = BAL_ERR_ARGUMENT, .code = "no-pseudo-counts", .variable = ""},
+    {.no_pseudo_counts = true, .pseudo_counts = {1, 1, 1, 1, 1, 1, 1, 1}, .status = BAL_ERR_ARGUMENT, .code = "no-pseudo-counts", .variable = ""},
+    {.other_network = true, .pseudo_counts = {1, 1, 1, 1, 1, 1, 1, 1}, .status = BAL_ERR_DATA, .code = "other-network", .variable = ""},
+    {.pseudo_counts = {1, 1, 1, 1, 1, 0, 0, 0}, .status = BAL_ERR_DATA, .code = "no-pseudo-counts", .variable = "B"},
+    {.pseudo_counts = {0, 0, 1, 1, 1, 1, 1, 1}, .status = BAL_ERR_DATA, .code = "no-pseudo-counts", .variable = "A"},
+    {.pseudo_counts = {1e308, 1e308, 1, 1, 1, 1, 1, 1}, .status = BAL_ERR_DATA, .code = "no-pseudo-counts", .variable = "A"}, /* no finite sum */
+    {.pseudo_counts = {1, 0, 0, 1, 0, 0, 0, 1}, .status = BAL_OK}, /* structural zeros */
+};
+
+START_TEST(what_cannot_be_carried_is_refused) {
+    bal_network *network = network_of(expert_network), *other = network_of("A:#2 ; B:#3");
+    bal_document *document = fitted_document(network, carried_refusals[_i].pseudo_counts);
+    if (carried_refusals[_i].no_pseudo_counts)
+        ck_assert_int_eq(bal_document_set_cells(document, BAL_CARRIED_PSEUDO_COUNTS, NULL, NULL), BAL_OK);
+    bal_prior_options options = {.kind = BAL_PRIOR_CARRIED, .strength = 1, .carried = carried_refusals[_i].no_document ? NULL : document};
+    bal_prior *prior = (bal_prior *)network;
+    bal_error err = {0};
+    bal_status status = bal_prior_create(carried_refusals[_i].other_network ? other : network, &options, &prior, &err);
+    ck_assert_msg(status == carried_refusals[_i].status, "%d: %s", _i, err.message);
+    if (status != BAL_OK) {
+        ck_assert_ptr_null(prior);
+        ck_assert_str_eq(err.code, carried_refusals[_i].code);
+        ck_assert_str_eq(err.variable, carried_refusals[_i].variable);
+        ck_assert_ptr_nonnull(bal_code_find(err.code));
+    } else {
+        bal_prior_free(prior);
+    }
+    bal_document_free(document);
+    bal_network_free(network);
+    bal_network_free(other);
+}
+END_TEST
+
+/* Counts in one of its structural zeros are refused, as under an expert's. */
+START_TEST(a_carried_zero_is_structural) {
+    bal_network *network = network_of(expert_network);
+    bal_cells *alpha = cells_of(network, earlier_counts), *counts = equal_cells(network, 1);
+    bal_prior *prior = carried_prior(alpha);
+    bal_error err = {0};
+    ck_assert_int_eq(bal_prior_check(prior, counts, NULL, &err), BAL_ERR_DATA);
+    ck_assert_str_eq(err.code, "structural-zero");
+    bal_cells_edit(counts, 1)[1] = 0;
+    ck_assert_int_eq(bal_prior_check(prior, counts, NULL, NULL), BAL_OK);
+    bal_prior_free(prior);
+    bal_cells_free(alpha);
+    bal_cells_free(counts);
+    bal_network_free(network);
 }
 END_TEST
 
 static bal_status make_and_free(void *context, bal_error *err) {
     const bal_document *document = context;
-    bal_prior_options options = {.kind = BAL_PRIOR_EXPERT, .strength = 1, .expert = document};
+    bool fitted = bal_document_cells(document, BAL_CARRIED_PSEUDO_COUNTS) != NULL;
+    bal_prior_options options = {.kind = fitted ? BAL_PRIOR_CARRIED : BAL_PRIOR_EXPERT, .strength = 1, .expert = document, .carried = document};
     bal_prior *prior = context;
     bal_status status = bal_prior_create(bal_document_network(document), &options, &prior, err);
     if (status != BAL_OK) ck_assert_ptr_null(prior);
@@ -198,8 +290,10 @@ static bal_status make_and_free(void *context, bal_error *err) {
 
 START_TEST(a_prior_survives_failing_allocations) {
     bal_network *network = network_of(expert_network);
-    bal_document *document = expert_document(network, true);
+    bal_document *document = expert_document(network, true), *fitted = fitted_document(network, earlier_counts);
     ck_assert_uint_eq(survive_allocations(make_and_free, document), 3);
+    ck_assert_uint_eq(survive_allocations(make_and_free, fitted), 3);
+    bal_document_free(fitted);
     bal_document_free(document);
     bal_network_free(network);
 }
@@ -213,6 +307,9 @@ static Suite *suite(void) {
     tcase_add_loop_test(c, an_experts_row_is_worth_its_cases, 0, sizeof experts / sizeof experts[0]);
     tcase_add_loop_test(c, a_prior_that_cannot_be_is_refused, 0, sizeof refusals / sizeof refusals[0]);
     tcase_add_test(c, a_prior_says_what_it_is);
+    tcase_add_test(c, carried_pseudo_counts_are_the_prior);
+    tcase_add_loop_test(c, what_cannot_be_carried_is_refused, 0, sizeof carried_refusals / sizeof carried_refusals[0]);
+    tcase_add_test(c, a_carried_zero_is_structural);
     tcase_add_test(c, a_prior_survives_failing_allocations);
     suite_add_tcase(s, c);
     return s;
