@@ -23,7 +23,9 @@ static bal_status measure_data(const bali_call *call, check_work *w, bal_error *
     w->cell_shares = bali_allocate(n, sizeof *w->cell_shares);
     if (!w->row_shares || !w->cell_shares) return bali_out_of_memory(err);
     /* Incomplete records are always counted here, and refused at the end: a check shows all it can. */
-    bal_status status = bali_inputs_read_data(call, BAL_MISSING_DROP, &w->inputs, err);
+    bal_missing missing = bali_call_missing(call);
+    bali_data_options options = {.missing = missing == BAL_MISSING_STOP ? BAL_MISSING_DROP : missing, .keep_records = true};
+    bal_status status = bali_inputs_read_data(call, &options, &w->inputs, err);
     if (status == BAL_OK)
         status = bal_support_measure(w->inputs.counts, w->inputs.source, &w->support, w->row_shares, w->cell_shares, err);
     w->facts.counts = w->inputs.counts;
@@ -61,7 +63,7 @@ static bal_status deliver(check_work *w, bali_text *page, bal_error *err) {
 /* Under --missing stop, incomplete records make the check fail as they would make a fit fail. */
 static bal_status judge_missing(const bali_call *call, const check_work *w, bal_error *err) {
     uint64_t dropped = w->inputs.facts.summary.dropped;
-    if (dropped == 0 || call->values[OPTION_MISSING].word == 1) return BAL_OK;
+    if (dropped == 0 || bali_call_missing(call) != BAL_MISSING_STOP) return BAL_OK;
     bal_status status = bal_error_set(err, BAL_ERR_DATA, "missing-cells",
                                       "%llu records have a missing cell, so a fit will refuse this table; fill them in, or give --missing drop",
                                       (unsigned long long)dropped);
@@ -89,15 +91,15 @@ static int run(const bali_call *call) {
     return exit;
 }
 
-static const option_id options[] = {OPTION_MISSING,     OPTION_MISSING_LABEL, OPTION_DELIMITER, OPTION_STRICT, OPTION_TABLE_ORDER,
+static const option_id options[] = {OPTION_MISSING,     OPTION_MISSING_LABEL, OPTION_UNRECORDED, OPTION_WEIGHT, OPTION_CODEBOOK, OPTION_DELIMITER, OPTION_STRICT, OPTION_TABLE_ORDER,
                                     OPTION_MAX_CELLS,   OPTION_MEMORY,        OPTION_REDACT,    OPTION_JSON,   OPTION_QUIET,
                                     OPTION_THREADS,     OPTION_SEED,          OPTION_HELP,      N_OPTIONS};
 
 const bali_command bali_cmd_check = {
     "check",
-    "NETWORK [TABLE]",
+    "NETWORK [TABLE ...]",
     1,
-    2,
+    MOST_ARGUMENTS,
     options,
     "Validates a network, and a table against it, and says whether the table is enough: of 100 new cases, about how many will meet "
     "a row, or a cell, that no record supports.",

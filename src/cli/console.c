@@ -61,7 +61,7 @@ int bali_console_fail(const bali_console *console, const bal_error *err) {
 }
 
 int bali_console_refuse(const bal_error *err) {
-    print("ballast: ", err);
+    print("", err);
     return exit_status(err);
 }
 

@@ -1,45 +1,7 @@
 #include "cli/fitted.h"
 
-#include "base/hash.h"
-#include "base/memory.h"
 #include "base/numbers.h"
-#include "ballast.h"
-
-#include <string.h>
-
-static bal_status set(bal_document *document, const char *name, bali_text *value, bal_error *err) {
-    bal_status status = value->failed ? bali_out_of_memory(err)
-                                      : bal_document_set_property(document, BAL_OF_NETWORK, BAL_NONE, name, bali_text_string(value), err);
-    bali_text_clear(value);
-    return status;
-}
-
-/* The SHA-256 of the counts as text: a line a family, its name and its counts in TABLE order. */
-static bal_status put_part(const bal_cells *counts, bali_text *value, bal_error *err) {
-    const bal_network *network = bal_cells_network(counts);
-    bali_hash *hash = bali_hash_create();
-    if (!hash) return bali_out_of_memory(err);
-    bali_text line = {0};
-    for (size_t v = 0; v < bal_network_variables(network); v++) {
-        size_t cells = bal_network_rows(network, v) * bal_network_outcomes(network, v);
-        const double *n = bal_cells_family(counts, v);
-        bali_text_clear(&line);
-        bali_text_puts(&line, bal_domain_name(bal_network_domain(network), v));
-        for (size_t c = 0; c < cells; c++) {
-            bali_text_putc(&line, ' ');
-            bali_text_put_number(&line, n[c]);
-        }
-        bali_text_putc(&line, '\n');
-        value->failed |= line.failed;
-        bali_hash_add(hash, bali_text_string(&line), line.length);
-    }
-    char digest[BALI_HASH_TEXT];
-    bali_hash_take(hash, digest);
-    bali_text_puts(value, digest);
-    bali_text_free(&line);
-    bali_hash_free(hash);
-    return BAL_OK;
-}
+#include "cli/provenance.h"
 
 static void put_prior(const bali_fit_facts *facts, bali_text *value) {
     bal_prior_kind kind = bal_prior_kind_of(facts->prior);
@@ -56,35 +18,19 @@ static void put_prior(const bali_fit_facts *facts, bali_text *value) {
     bali_text_put_number(value, facts->prior_options->floor);
 }
 
-/* "clinic.xml" sha256=..., "cases.csv" sha256=... */
-static void put_inputs(const bali_data_facts *data, bali_text *value) {
-    for (size_t i = 0; i < data->n_inputs; i++) {
-        const bal_file_facts *file = &data->inputs[i];
-        bali_text_puts(value, i ? ", \"" : "\"");
-        bali_text_put_visible(value, file->name, strlen(file->name)); /* XML has no control characters */
-        bali_text_printf(value, "\" %s%s", file->sha256[0] ? "sha256=" : "", file->sha256);
-        if (!file->sha256[0]) bali_text_printf(value, "bytes=%llu", (unsigned long long)file->bytes);
-    }
-}
-
-static bal_status set_provenance(const bali_fit_facts *facts, bal_document *document, bal_error *err) {
+/* What prior the pseudo-counts are of; carried ones are of the prior they were carried from. */
+static bal_status set_prior(const bali_fit_facts *facts, bal_document *document, bal_error *err) {
+    if (bal_prior_kind_of(facts->prior) == BAL_PRIOR_CARRIED) return BAL_OK;
     bali_text value = {0};
-    bali_text_put_number(&value, facts->fit->records);
-    bal_status status = set(document, "ballast.records", &value, err);
-    if (status == BAL_OK && bal_prior_kind_of(facts->prior) == BAL_PRIOR_BDEU) {
+    bal_status status;
+    if (bal_prior_kind_of(facts->prior) == BAL_PRIOR_BDEU) {
         bali_text_put_number(&value, facts->fit->strength.value);
-        status = set(document, "ballast.ess", &value, err);
-    } else if (status == BAL_OK) {
+        status = bali_set_property(document, "ballast.ess", &value, err);
+    } else {
         status = bal_document_set_property(document, BAL_OF_NETWORK, BAL_NONE, "ballast.ess", NULL, err);
     }
     put_prior(facts, &value);
-    if (status == BAL_OK) status = set(document, "ballast.prior", &value, err);
-    bali_text_puts(&value, "ballast " BALLAST_VERSION);
-    if (status == BAL_OK) status = set(document, "ballast.made-by", &value, err);
-    put_inputs(facts->data, &value);
-    if (status == BAL_OK) status = set(document, "ballast.inputs", &value, err);
-    if (status == BAL_OK) status = put_part(facts->fit->counts, &value, err);
-    if (status == BAL_OK) status = set(document, "ballast.parts", &value, err);
+    if (status == BAL_OK) status = bali_set_property(document, "ballast.prior", &value, err);
     bali_text_free(&value);
     return status;
 }
@@ -101,13 +47,14 @@ static bal_status set_tables(const bali_fit_facts *facts, bal_document *document
     return status;
 }
 
-bal_status bali_fitted_document(const bali_fit_facts *facts, bal_document **out, bal_error *err) {
+bal_status bali_fitted_document(const bali_fit_facts *facts, const bali_inputs *inputs, bal_document **out, bal_error *err) {
     bal_document *document = NULL;
     bal_status status = bal_document_copy(facts->document, &document, err);
     if (status == BAL_OK) status = set_tables(facts, document, err);
     if (status == BAL_OK) status = bal_document_set_cells(document, BAL_CARRIED_COUNTS, facts->fit->counts, err);
     if (status == BAL_OK) status = bal_document_set_cells(document, BAL_CARRIED_PSEUDO_COUNTS, facts->fit->pseudo_counts, err);
-    if (status == BAL_OK) status = set_provenance(facts, document, err);
+    if (status == BAL_OK) status = set_prior(facts, document, err);
+    if (status == BAL_OK) status = bali_set_provenance(document, inputs, bal_prior_kind_of(facts->prior) == BAL_PRIOR_CARRIED, err);
     if (status == BAL_OK) {
         *out = document;
     } else {

@@ -14,7 +14,7 @@
 #include <string.h>
 #include <unistd.h>
 
-static const bali_command *const commands[] = {&bali_cmd_check, &bali_cmd_fit, &bali_cmd_draw, &bali_cmd_explain};
+static const bali_command *const commands[] = {&bali_cmd_check, &bali_cmd_fit, &bali_cmd_tally, &bali_cmd_draw, &bali_cmd_explain};
 enum { N_COMMANDS = sizeof commands / sizeof commands[0] };
 
 /* A file must never be opened as descriptor 0, 1 or 2, or messages would end up in it. */

@@ -8,9 +8,9 @@
 
 static const char *const auto_words[] = {"auto", "auto-loo", NULL};
 static const char *const scale_words[] = {"auto", NULL};
-static const char *const prior_words[] = {"bdeu", "k2", "jeffreys", "expert", NULL};
+static const char *const prior_words[] = {"bdeu", "k2", "jeffreys", "expert", "carried", NULL};
 static const char *const estimate_words[] = {"mean", "ml", NULL};
-static const char *const missing_words[] = {"stop", "drop", NULL};
+static const char *const missing_words[] = {"stop", "drop", "family", NULL};
 static const char *const order_words[] = {"for-fastest", "for-slowest", NULL};
 
 static const option_spec table[N_OPTIONS] = {
@@ -18,7 +18,8 @@ static const option_spec table[N_OPTIONS] = {
     [OPTION_RECORDS] = {"records", 0, KIND_WHOLE, "N", .least = 0, .most = 1e15, .help = "how many records to draw"},
     [OPTION_PRIOR] = {"prior", 0, KIND_WORD, "KIND", "bdeu", .words = prior_words,
                       .help = "bdeu: the ESS spread evenly over a family's cells; k2: 1 a cell; jeffreys: 1/2 a cell; "
-                              "expert: NETWORK's own tables, each row worth --row-ess cases"},
+                              "expert: NETWORK's own tables, each row worth --row-ess cases; carried: the pseudo-counts of an earlier "
+                              "fit, whose counts are added to the new ones"},
     [OPTION_ESS] = {"ess", 0, KIND_NUMBER_OR_WORD, "N|auto|auto-loo", "auto", .least = 1e-9, .most = 1e12, .words = auto_words,
                     .help = "equivalent sample size of bdeu, in records; auto: the one with the largest log marginal "
                             "likelihood, auto-loo: with the largest leave-one-out log-likelihood"},
@@ -28,18 +29,36 @@ static const option_spec table[N_OPTIONS] = {
     [OPTION_PRIOR_FLOOR] = {"prior-floor", 0, KIND_NUMBER, "P", "0", .least = 0, .most = 1, .below_most = true,
                             .help = "share of the uniform row mixed into each of the expert's rows, so that no outcome is "
                                     "impossible"},
+    [OPTION_CARRY] = {"carry", 0, KIND_NUMBER, "W", "1", .least = 0, .most = 1,
+                      .help = "carried: multiplies the old counts by W first, so that old records weigh less than new ones"},
     [OPTION_LEVEL] = {"level", 0, KIND_NUMBER, "P", "0.95", .least = 0, .most = 1, .above_least = true, .below_most = true,
                       .help = "level of the credible intervals"},
     [OPTION_ESTIMATE] = {"estimate", 0, KIND_WORD, "mean|ml", "mean", .words = estimate_words,
                          .help = "which tables are written: posterior means, or raw frequencies (rows without records uniform)"},
     [OPTION_FOLDS] = {"folds", 0, KIND_WHOLE, "K", "10", .least = 0, .most = 65535,
                       .help = "hold the records out in K parts, each predicted by a fit to the others; 0: do not"},
-    [OPTION_MISSING] = {"missing", 0, KIND_WORD, "stop|drop", "stop", .words = missing_words,
-                        .help = "what a missing cell does: refuse the table, or leave the record out. Leaving records out biases "
-                                "the tables when whether a test was done depended on another observation; \"not done\" is often "
-                                "best an outcome of its own"},
+    [OPTION_FOLD_COLUMN] = {"fold-column", 0, KIND_TEXT, "COLUMN",
+                            .help = "hold out one label of this column at a time (a patient, a site, a period), so that none is on both "
+                                    "sides; in place of --folds"},
+    [OPTION_HOLDOUT] = {"holdout", 0, KIND_NUMBER, "F", .least = 0, .most = 1, .above_least = true, .below_most = true,
+                        .help = "hold out this share of the records, at random; in place of --folds"},
+    [OPTION_TEST] = {"test", 0, KIND_TEXT, "TABLE", .help = "hold this table out: the fit is to DATA alone; in place of --folds"},
+    [OPTION_REPEATS] = {"repeats", 0, KIND_WHOLE, "R", "1", .least = 1, .most = 1000,
+                        .help = "hold out anew R times, with other random parts; totals are means, standard errors those of the records' "
+                                "means"},
+    [OPTION_MISSING] = {"missing", 0, KIND_WORD, "stop|drop|family", "stop", .words = missing_words,
+                        .help = "what a missing cell does: refuse the table, leave the record out, or count the record in every family "
+                                "it is complete for. Leaving records out biases the tables when whether a test was done depended on "
+                                "another observation; counting by family mixes different sets of records; \"not done\" is often best an "
+                                "outcome of its own, which --codebook can give to the empty cell"},
     [OPTION_MISSING_LABEL] = {"missing-label", 0, KIND_TEXT, "TEXT", .repeatable = true,
                               .help = "one more spelling of a missing cell, besides the empty cell and NA; may be repeated"},
+    [OPTION_UNRECORDED] = {"unrecorded", 0, KIND_TEXT, "VARIABLE", .repeatable = true,
+                           .help = "nobody recorded this variable: every family that touches it keeps its prior; may be repeated"},
+    [OPTION_WEIGHT] = {"weight", 0, KIND_TEXT, "COLUMN",
+                       .help = "a column of case weights; a whole weight w means w equal records"},
+    [OPTION_CODEBOOK] = {"codebook", 0, KIND_TEXT, "FILE",
+                         .help = "a CSV with the columns variable,outcome,code: how the table spells the outcomes"},
     [OPTION_DELIMITER] = {"delimiter", 0, KIND_TEXT, "CHARACTER", .help = "what stands between cells (default: a comma; a tab for .tsv "
                                                                           "files and headers with a tab)"},
     [OPTION_STRICT] = {"strict", 0, KIND_FLAG, .help = "refuse columns that are no variable, instead of naming them"},
@@ -77,20 +96,22 @@ static void put_words(bali_text *text, const char *const *words) {
     }
 }
 
-/* "a number above 0 and below 1", "a whole number from 0 to 65535, auto or auto-loo". */
+/* "a number above 0 up to, but not, 1", "a whole number from 0 up to 65535". */
 static void put_range(bali_text *text, const option_spec *spec) {
     if (spec->kind == KIND_WORD) {
         put_words(text, spec->words);
         return;
     }
-    bali_text_puts(text, spec->kind == KIND_WHOLE ? "a whole number" : spec->kind == KIND_SIZE ? "a size" : "a number");
+    bali_text_puts(text, spec->kind == KIND_WHOLE ? "a whole number" : spec->kind == KIND_SIZE ? "bytes, such as 512M or 4G," : "a number");
     bali_text_puts(text, spec->above_least ? " above " : " from ");
     bali_text_put_number(text, spec->least);
-    bali_text_puts(text, spec->below_most ? " and below " : spec->above_least ? " up to " : " to ");
-    if (spec->kind == KIND_WHOLE && spec->most >= 0x1p64) {
-        bali_text_puts(text, "18446744073709551615");
-    } else {
+    bali_text_puts(text, spec->below_most ? " up to, but not, " : " up to ");
+    if (spec->most >= 0x1p64) {
+        bali_text_puts(text, "18446744073709551615"); /* 2^64 - 1, which a double does not hold */
+    } else if (spec->kind == KIND_NUMBER || spec->kind == KIND_NUMBER_OR_WORD) {
         bali_text_put_number(text, spec->most);
+    } else {
+        bali_text_printf(text, "%.0f", spec->most);
     }
     if (spec->words) {
         bali_text_puts(text, ", or ");
@@ -187,7 +208,7 @@ static bal_status set_option(bali_call *c, option_id id, const char *text, bal_e
         return bal_error_set(err, BAL_ERR_ARGUMENT, "option-twice", "--%s stands twice; give it once", spec->name);
     if (!read_value(spec, text, value)) return refuse_value(spec, text, err);
     value->given = true;
-    if (id == OPTION_MISSING_LABEL) c->missing_labels[c->n_missing_labels++] = text;
+    if (spec->repeatable) value->texts[value->n_texts++] = text;
     return BAL_OK;
 }
 
@@ -233,9 +254,11 @@ static bal_status check_arguments(const bali_command *command, const bali_call *
     return status;
 }
 
-static bal_status set_fallbacks(bali_call *c, bal_error *err) {
+static bal_status set_fallbacks(bali_call *c, size_t n_words, bal_error *err) {
     for (option_id id = 0; id < N_OPTIONS; id++) {
         c->values[id].word = -1;
+        if (table[id].repeatable && !(c->values[id].texts = bali_allocate(n_words, sizeof *c->values[id].texts)))
+            return bali_out_of_memory(err);
         if (table[id].fallback && !read_value(&table[id], table[id].fallback, &c->values[id]))
             return bal_error_set(err, BAL_ERR_ARGUMENT, "bad-value", "the default of --%s is out of range", table[id].name);
     }
@@ -246,9 +269,8 @@ bal_status bali_call_read(const bali_command *command, int n_words, char *const 
     *c = (bali_call){0};
     const char **arguments = bali_allocate((size_t)n_words + 1, sizeof *arguments);
     c->arguments = arguments;
-    c->missing_labels = bali_allocate((size_t)n_words + 1, sizeof *c->missing_labels);
-    if (!c->arguments || !c->missing_labels) return bali_out_of_memory(err);
-    bal_status status = set_fallbacks(c, err);
+    if (!c->arguments) return bali_out_of_memory(err);
+    bal_status status = set_fallbacks(c, (size_t)n_words, err);
     bool options = true;
     for (int i = 0; i < n_words && status == BAL_OK; i++) {
         if (options && strcmp(words[i], "--") == 0) {
@@ -264,7 +286,7 @@ bal_status bali_call_read(const bali_command *command, int n_words, char *const 
 
 void bali_call_free(bali_call *c) {
     bali_free((void *)c->arguments);
-    bali_free(c->missing_labels);
+    for (option_id id = 0; id < N_OPTIONS; id++) bali_free(c->values[id].texts);
     *c = (bali_call){0};
 }
 

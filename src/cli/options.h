@@ -17,11 +17,19 @@ typedef enum option_id {
     OPTION_SCALE,
     OPTION_ROW_ESS,
     OPTION_PRIOR_FLOOR,
+    OPTION_CARRY,
     OPTION_LEVEL,
     OPTION_ESTIMATE,
     OPTION_FOLDS,
+    OPTION_FOLD_COLUMN,
+    OPTION_HOLDOUT,
+    OPTION_TEST,
+    OPTION_REPEATS,
     OPTION_MISSING,
     OPTION_MISSING_LABEL,
+    OPTION_UNRECORDED,
+    OPTION_WEIGHT,
+    OPTION_CODEBOOK,
     OPTION_DELIMITER,
     OPTION_STRICT,
     OPTION_TABLE_ORDER,
@@ -71,18 +79,18 @@ typedef struct option_value {
     double number;
     uint64_t whole;
     int word;         /* index into words, -1 = a number was given */
+    const char **texts; /* a repeatable option: every text given, in order */
+    size_t n_texts;
 } option_value;
-
-enum { MOST_ARGUMENTS = 4096 };
 
 /** One call of a command. Texts are borrowed from the argument vector. */
 typedef struct bali_call {
     option_value values[N_OPTIONS];
     const char *const *arguments; /* what is no option, in order */
     size_t n_arguments;
-    const char **missing_labels;  /* every --missing-label */
-    size_t n_missing_labels;
 } bali_call;
+
+enum { MOST_ARGUMENTS = 4096 };
 
 /** A command of the program. */
 typedef struct bali_command {

@@ -3,13 +3,14 @@
 /* Which priors an option goes with. */
 static const struct {
     option_id option;
-    bool with[BAL_PRIOR_KINDS]; /* bdeu, k2, jeffreys, expert */
+    bool with[BAL_PRIOR_KINDS]; /* bdeu, k2, jeffreys, expert, carried */
     const char *goes_with;
 } rules[] = {
-    {OPTION_ESS, {true, false, false, false}, "bdeu"},
-    {OPTION_SCALE, {false, true, true, true}, "k2, jeffreys and expert"},
-    {OPTION_ROW_ESS, {false, false, false, true}, "expert"},
-    {OPTION_PRIOR_FLOOR, {false, false, false, true}, "expert"},
+    {OPTION_ESS, {true, false, false, false, false}, "bdeu"},
+    {OPTION_SCALE, {false, true, true, true, false}, "k2, jeffreys and expert"},
+    {OPTION_ROW_ESS, {false, false, false, true, false}, "expert"},
+    {OPTION_PRIOR_FLOOR, {false, false, false, true, false}, "expert"},
+    {OPTION_CARRY, {false, false, false, false, true}, "carried"},
 };
 
 static bal_status check_rules(const bali_call *call, bal_prior_kind kind, bal_error *err) {

@@ -10,12 +10,13 @@ static bool is_input(const char *path, const char *argument) {
 }
 
 static bal_status check_against_inputs(const bali_call *call, const char *path, bal_error *err) {
-    for (size_t i = 0; i < call->n_arguments; i++) {
-        if (bali_output_is_standard(path) || !is_input(path, call->arguments[i])) continue;
-        return bal_error_set(err, BAL_ERR_ARGUMENT, "output-is-input", "%s is read and would be written; write to another file and move it over",
-                             path);
-    }
-    return BAL_OK;
+    static const option_id files[] = {OPTION_TEST, OPTION_CODEBOOK};
+    bool read = false;
+    for (size_t i = 0; i < call->n_arguments; i++) read |= is_input(path, call->arguments[i]);
+    for (size_t i = 0; i < sizeof files / sizeof files[0]; i++) read |= call->values[files[i]].given && is_input(path, call->values[files[i]].text);
+    if (!read || bali_output_is_standard(path)) return BAL_OK;
+    return bal_error_set(err, BAL_ERR_ARGUMENT, "output-is-input", "%s is read and would be written; write to another file and move it over",
+                         path);
 }
 
 static bal_status open_one(const bali_call *call, option_id id, bali_output **out, bal_error *err) {

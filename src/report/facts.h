@@ -9,15 +9,19 @@
 #include "ballast/judge.h"
 #include "ballast/posterior.h"
 
-enum { BALI_MOST_INPUTS = 8 };
-
 /** The files that went in, and the records of the table among them. */
 typedef struct bali_data_facts {
-    bal_file_facts inputs[BALI_MOST_INPUTS]; /* the network first */
+    bal_file_facts *inputs;     /* the network first, then what gave the data, then codebook and test table */
     size_t n_inputs;
-    bool from_table;                         /* false: the counts came with a network file */
-    bal_source_summary summary;              /* of the table */
-    double records;
+    size_t first_data, n_data;  /* those that gave the data */
+    bool from_table;            /* false: the counts came with a network file */
+    bool by_family;             /* records with missing cells were counted in the families they are complete for */
+    bool fractional;            /* some count is not whole: nothing can be left out one by one */
+    bal_source_summary summary; /* of the table(s) */
+    double records;             /* that were counted; under whole weights those the weights stand for */
+    double weight;
+    double earlier;             /* records whose counts were carried over, times --carry */
+    const bool *unrecorded;     /* one a variable; NULL when there is none */
 } bali_data_facts;
 
 /** All that `ballast fit` tells. */
@@ -29,8 +33,9 @@ typedef struct bali_fit_facts {
     const bal_fit *fit;
     const bal_other_prior *others;
     size_t n_others;
+    double log_predictive;             /* carried: of the new counts given the old, nats; NaN otherwise */
     const bal_heldout *heldout;        /* NULL when nothing was held out */
-    size_t folds;
+    const bal_heldout_options *heldout_options;
     double level;
     bool maximum_likelihood;           /* --estimate ml */
     const char *written;               /* base name of the file written, or NULL */
@@ -52,6 +57,10 @@ typedef struct bali_check_facts {
 
 void bali_check_text(const bali_check_facts *facts, bali_text *text);
 void bali_check_json(const bali_check_facts *facts, bali_json *json);
+
+/** `ballast tally`: what was counted. */
+void bali_tally_text(const bali_data_facts *data, const bal_cells *counts, bali_text *text);
+void bali_tally_json(const bal_document *document, const bali_data_facts *data, const bal_cells *counts, bali_json *json);
 
 /** `ballast draw`: what was simulated. */
 void bali_draw_json(const bal_document *document, const bali_data_facts *data, uint64_t records, uint64_t seed, bali_json *json);
@@ -77,6 +86,12 @@ typedef struct bali_row_counts {
     size_t rows, prior, few, data;
 } bali_row_counts;
 bali_row_counts bali_count_rows(const bal_cells *counts);
+
+/** Whether a family touches a variable that nobody recorded. */
+bool bali_is_unrecorded(const bali_data_facts *data, const bal_network *network, size_t variable);
+
+/** Records that the leave-one-out score runs over, carried ones included; NaN when there is none. */
+double bali_scored_records(const bali_fit_facts *facts);
 
 /** One row of a network. */
 typedef struct bali_row {

@@ -15,14 +15,15 @@ static const char *strength_choice(const bali_fit_facts *facts) {
 static void put_prior(bali_json *json, const bali_fit_facts *facts) {
     bal_prior_kind kind = bal_prior_kind_of(facts->prior);
     double value = facts->fit->strength.value;
+    bool scaled = kind != BAL_PRIOR_BDEU && kind != BAL_PRIOR_CARRIED;
     bali_json_object(json, "prior");
     bali_json_string(json, "kind", bal_prior_kind_name(kind));
     bali_json_number(json, "ess", kind == BAL_PRIOR_BDEU ? value : NAN);
     bali_json_string(json, "ess_chosen", kind == BAL_PRIOR_BDEU ? strength_choice(facts) : NULL);
     bali_json_null(json, "strength");
     bali_json_null(json, "lean");
-    bali_json_number(json, "scale", kind == BAL_PRIOR_BDEU ? NAN : value);
-    bali_json_string(json, "scale_chosen", kind == BAL_PRIOR_BDEU ? NULL : strength_choice(facts));
+    bali_json_number(json, "scale", scaled ? value : NAN);
+    bali_json_string(json, "scale_chosen", scaled ? strength_choice(facts) : NULL);
     bali_json_number(json, "row_ess",
                      kind == BAL_PRIOR_EXPERT && facts->prior_options->row_ess > 0 ? facts->prior_options->row_ess : NAN);
     bali_json_number(json, "floor", kind == BAL_PRIOR_EXPERT ? facts->prior_options->floor : NAN);
@@ -32,9 +33,11 @@ static void put_prior(bali_json *json, const bali_fit_facts *facts) {
 static void put_scores(bali_json *json, const bali_fit_facts *facts) {
     const bal_fit *fit = facts->fit;
     bali_json_number(json, "log_marginal_likelihood", fit->scores.log_marginal_likelihood);
+    bali_json_boolean(json, "composite", facts->data->by_family);
+    bali_json_number(json, "log_predictive", facts->log_predictive);
     bali_json_object(json, "loo");
     bali_json_number(json, "log_likelihood", fit->scores.leave_one_out);
-    bali_json_number(json, "per_record", fit->records > 0 ? fit->scores.leave_one_out / fit->records : NAN);
+    bali_json_number(json, "per_record", fit->scores.leave_one_out / bali_scored_records(facts));
     bali_json_end_object(json);
     bali_json_array(json, "other_priors");
     for (size_t i = 0; i < facts->n_others; i++) {
@@ -42,15 +45,15 @@ static void put_scores(bali_json *json, const bali_fit_facts *facts) {
         bali_json_object(json, NULL);
         bali_json_string(json, "kind", bal_prior_kind_name(other->kind));
         bali_json_number(json, "ess", other->kind == BAL_PRIOR_BDEU ? other->strength : NAN);
-        bali_json_number(json, "loo_per_record", fit->records > 0 ? other->leave_one_out / fit->records : NAN);
+        bali_json_number(json, "loo_per_record", other->leave_one_out / bali_scored_records(facts));
         bali_json_end_object(json);
     }
     bali_json_end_array(json);
 }
 
-static void put_paired(bali_json *json, const char *key, bool with_records, uint64_t records, const bal_paired *paired) {
+static void put_paired(bali_json *json, const char *key, const double *records, const bal_paired *paired) {
     bali_json_object(json, key);
-    if (with_records) bali_json_whole(json, "records", records);
+    if (records) bali_json_number(json, "records", *records);
     bali_json_number(json, "bayes", paired->bayes);
     bali_json_number(json, "ml", paired->ml);
     bali_json_number(json, "mean_difference", paired->mean_difference);
@@ -58,36 +61,46 @@ static void put_paired(bali_json *json, const char *key, bool with_records, uint
     bali_json_end_object(json);
 }
 
-static void put_likelihood(bali_json *json, const char *key, double log_likelihood, uint64_t records) {
+static void put_likelihood(bali_json *json, const char *key, double log_likelihood, double records) {
     bali_json_object(json, key);
     bali_json_number(json, "log_likelihood", log_likelihood);
-    bali_json_number(json, "per_record", records > 0 ? log_likelihood / (double)records : NAN);
+    bali_json_number(json, "per_record", records > 0 ? log_likelihood / records : NAN);
 }
 
-static void put_heldout(bali_json *json, const bal_heldout *h, size_t folds) {
+static void put_heldout(bali_json *json, const bal_heldout *h, const bal_heldout_options *options) {
+    static const char *const methods[] = {"folds", "fold-column", "holdout", "test"};
+    bool parts = options->method == BAL_HELDOUT_FOLDS || options->method == BAL_HELDOUT_GROUPS;
     bali_json_object(json, "heldout");
-    bali_json_string(json, "method", "folds");
-    bali_json_whole(json, "folds", folds);
-    bali_json_whole(json, "repeats", 1);
-    bali_json_whole(json, "records", h->records);
-    bali_json_whole(json, "incomplete", h->incomplete);
+    bali_json_string(json, "method", methods[options->method]);
+    if (parts) {
+        bali_json_whole(json, "folds", h->parts);
+    } else {
+        bali_json_null(json, "folds");
+    }
+    bali_json_whole(json, "repeats", options->repeats);
+    bali_json_number(json, "records", h->records);
+    bali_json_number(json, "incomplete", h->incomplete);
     put_likelihood(json, "bayes", h->bayes_log_likelihood, h->records);
-    bali_json_whole(json, "impossible", h->bayes_impossible);
+    bali_json_number(json, "impossible", h->bayes_impossible);
     bali_json_end_object(json);
     bali_json_object(json, "ml");
     bali_json_number(json, "log_likelihood", h->ml_log_likelihood);
-    bali_json_whole(json, "impossible", h->impossible);
-    bali_json_whole(json, "undefined", h->undefined);
+    bali_json_number(json, "impossible", h->impossible);
+    bali_json_number(json, "undefined", h->undefined);
     bali_json_end_object(json);
     put_likelihood(json, "prior_only", h->prior_log_likelihood, h->records);
     bali_json_end_object(json);
-    put_paired(json, "comparable", true, h->comparable, &h->on_comparable);
+    put_paired(json, "comparable", &h->comparable, &h->on_comparable);
     bali_json_object(json, "others");
-    bali_json_whole(json, "records", h->impossible + h->undefined);
+    bali_json_number(json, "records", h->impossible + h->undefined);
     bali_json_number(json, "bayes", h->bayes_on_others);
     bali_json_number(json, "break_even", h->break_even);
     bali_json_end_object(json);
-    put_paired(json, "quadratic", false, 0, &h->quadratic);
+    put_paired(json, "quadratic", NULL, &h->quadratic);
+    bali_json_object(json, "strength"); /* of the prior, settled in each training part */
+    bali_json_number(json, "least", h->least_strength);
+    bali_json_number(json, "largest", h->largest_strength);
+    bali_json_end_object(json);
     bali_json_end_object(json);
 }
 
@@ -143,6 +156,7 @@ static bal_status put_family(bali_json *json, const bali_fit_facts *facts, size_
     bali_json_array(json, "outcomes");
     for (size_t k = 0; k < bal_domain_outcomes(domain, v); k++) bali_json_string(json, NULL, bal_domain_outcome(domain, v, k));
     bali_json_end_array(json);
+    bali_json_boolean(json, "recorded", !bali_is_unrecorded(facts->data, network, v));
     bali_json_number(json, "log_marginal_likelihood", facts->fit->family_scores[v]);
     bali_json_array(json, "rows");
     for (size_t row = 0; row < bal_network_rows(network, v) && status == BAL_OK; row++) status = put_row(json, facts, v, row, room, err);
@@ -179,9 +193,8 @@ bal_status bali_fit_json(const bali_fit_facts *facts, bali_json *json, bal_error
     bali_json_string(json, "estimate", facts->maximum_likelihood ? "ml" : "mean");
     bali_json_number(json, "level", facts->level);
     put_scores(json, facts);
-    bali_json_null(json, "log_predictive");
     if (facts->heldout) {
-        put_heldout(json, facts->heldout, facts->folds);
+        put_heldout(json, facts->heldout, facts->heldout_options);
     } else {
         bali_json_null(json, "heldout");
     }

@@ -31,7 +31,9 @@ static void put_data(bali_json *json, const bal_document *document, const bali_d
     const bal_source_summary *summary = &data->summary;
     bali_json_object(json, "data");
     bali_json_number(json, "records", data->records);
-    bali_json_number(json, "weight", data->records);
+    bali_json_number(json, "weight", data->weight);
+    bali_json_number(json, "earlier", data->earlier);
+    bali_json_number(json, "incomplete", (double)summary->incomplete);
     bali_json_whole(json, "dropped", summary->dropped);
     bali_json_array(json, "ignored_columns");
     for (size_t i = 0; i < summary->n_ignored; i++) bali_json_string(json, NULL, summary->ignored[i]);

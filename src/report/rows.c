@@ -3,7 +3,22 @@
 #include "model/shape.h"
 #include "report/facts.h"
 
+#include <math.h>
 #include <string.h>
+
+bool bali_is_unrecorded(const bali_data_facts *data, const bal_network *network, size_t variable) {
+    size_t n_parents;
+    const size_t *parents = bal_network_parents(network, variable, &n_parents);
+    if (!data->unrecorded) return false;
+    bool touched = data->unrecorded[variable];
+    for (size_t p = 0; p < n_parents; p++) touched |= data->unrecorded[parents[p]];
+    return touched;
+}
+
+double bali_scored_records(const bali_fit_facts *facts) {
+    double records = facts->data->records + facts->data->earlier;
+    return records > 0 ? records : NAN;
+}
 
 size_t bali_free_parameters(const bal_network *network, const bal_cells *pseudo_counts) {
     size_t free_parameters = 0;

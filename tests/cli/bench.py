@@ -155,7 +155,7 @@ class Option:
 
     @property
     def is_number(self):
-        return self.argument is not None and re.fullmatch(r"[NPTK](\|[a-z|-]+)?|SIZE", self.argument) is not None
+        return self.argument is not None and re.fullmatch(r"[NPTKWFR](\|[a-z|-]+)?|SIZE", self.argument) is not None
 
     def words(self, value):
         return ["--" + self.name] + ([value] if self.argument else [])

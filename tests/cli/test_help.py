@@ -12,6 +12,7 @@ RUNS = {
     "check": ["check", "clinic.xml", "cases.csv", "--json", "out.json"],
     "fit": ["fit", "clinic.xml", "cases.csv", "-o", "out.xml", "--json", "out.json"],
     "draw": ["draw", "clinic.xml", "--records", "50", "-o", "out.csv"],
+    "tally": ["tally", "clinic.xml", "cases.csv", "-o", "out.xml", "--json", "out.json"],
     "explain": ["explain", "unknown-label"],
 }
 GOES_WITH = {"scale": ["--prior", "k2"], "prior-floor": ["--prior", "expert"], "row-ess": ["--prior", "expert"]}
@@ -77,7 +78,7 @@ class Help(ProgramTest):
         for name, words in RUNS.items():
             for option in options(self.program, name):
                 value = option.default or IN_WORDS.get(option.name)
-                if value is None:
+                if value is None or option.name == "carry":  # that takes an earlier fit: test_carried.py
                     continue
                 tried += 1
                 beside = words + GOES_WITH.get(option.name, [])

@@ -12,7 +12,8 @@ from bench import ProgramTest, commands, main, options
 NO_NUMBERS = ["10x", "", " ", "1e400", "-1", "nan", "inf", "-inf", " 5", "5 ", "5\n", "1,5", "1_000", "0x10", "1e", ".", "--5",
               "18446744073709551616", "\u0665", "1\x1b[2J"]
 ARGUMENTS = {"check": ["missing.xml"], "fit": ["missing.xml"], "explain": [],
-             "draw": ["missing.xml", "--records", "3", "-o", "-"]}
+             "draw": ["missing.xml", "--records", "3", "-o", "-"],
+             "tally": ["missing.xml", "missing.csv", "-o", "-"]}
 
 
 class Options(ProgramTest):
@@ -43,9 +44,9 @@ class Options(ProgramTest):
         """Each numeric option with the range that its refusal names: lowest, highest, and whether these belong to it."""
         for command, option in self.each(lambda option: option.is_number):
             told = self.refused(command, option, "--" + option.name, "10x").err.decode()
-            found = re.search(r"; give a (?:whole number|number|size) (from|above) (\S+) (to|up to|and below) ([^\s,]+)", told)
+            found = re.search(r"; give (?:a whole number|a number|bytes, such as 512M or 4G,) (from|above) (\S+) (up to, but not,|up to) ([^\s,]+)", told)
             self.assertTrue(found, told)
-            yield command, option, found.group(2), found.group(1) == "from", found.group(4), found.group(3) != "and below"
+            yield command, option, found.group(2), found.group(1) == "from", found.group(4), found.group(3) == "up to"
 
     def test_ends_of_ranges(self):
         for command, option, low, has_low, high, has_high in self.ranges():
@@ -72,10 +73,10 @@ class Options(ProgramTest):
 
     def test_option_twice(self):
         values = {"prior": "k2", "estimate": "ml", "missing": "drop", "table-order": "for-slowest", "level": "0.5",
-                  "prior-floor": "0.5"}
+                  "prior-floor": "0.5", "holdout": "0.5"}
         for command, option in self.each():
             words = option.words(values.get(option.name, "1")) * 2
-            arguments = [word for word in ARGUMENTS[command] if word == "missing.xml"]
+            arguments = [word for word in ARGUMENTS[command] if word.startswith("missing.")]
             done = self.ballast(command, *words, *arguments, status=None)
             if option.repeatable:
                 self.assertNotIn(b"[option-twice]", done.err)
@@ -92,7 +93,7 @@ class Options(ProgramTest):
 
     def test_words_that_are_none(self):
         for command, option in self.each(lambda option: option.argument and not option.is_number):
-            if option.argument in ("FILE", "TEXT", "CHARACTER"):
+            if option.argument in ("FILE", "TEXT", "CHARACTER", "COLUMN", "VARIABLE", "TABLE"):
                 continue
             for value in ("", "x", (option.default or "") + "s", " " + (option.default or ""), (option.default or "").upper()):
                 done = self.refused(command, option, "--" + option.name, value)
@@ -107,7 +108,7 @@ class Options(ProgramTest):
     def test_threads(self):
         for value in ("0", "1000000"):
             done = self.ballast("fit", "missing.xml", "--threads", value, status=2)
-            self.assert_error(done, "bad-value", "a whole number from 1 to 1024")
+            self.assert_error(done, "bad-value", "a whole number from 1 up to 1024")
         for value in ("1", "1024"):
             self.ballast("fit", "clinic.xml", "cases.csv", "--threads", value)
 
