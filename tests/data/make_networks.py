@@ -27,12 +27,14 @@ DTD = """<!DOCTYPE BIF [
 """
 
 
-def write(path, title, outcomes, parents, table=None, row_ess=None, note="Invented: no number here comes from patients."):
+def write(path, title, outcomes, parents, table=None, row_ess=None, note="Invented: no number here comes from patients.",
+          properties=None):
     lines = ['<?xml version="1.0" encoding="UTF-8"?>', DTD + '<BIF VERSION="0.3">', "<NETWORK>", f"  <NAME>{escape(title)}</NAME>",
              f"  <PROPERTY>note = {escape(note)}</PROPERTY>"]
     for name, labels in outcomes.items():
         lines += ['  <VARIABLE TYPE="nature">', f"    <NAME>{name}</NAME>"]
-        lines += [f"    <OUTCOME>{escape(label)}</OUTCOME>" for label in labels] + ["  </VARIABLE>"]
+        lines += [f"    <OUTCOME>{escape(label)}</OUTCOME>" for label in labels]
+        lines += [f"    <PROPERTY>{text}</PROPERTY>" for text in (properties or {}).get(name, [])] + ["  </VARIABLE>"]
     for name in outcomes:
         lines += ["  <DEFINITION>", f"    <FOR>{name}</FOR>"]
         lines += [f"    <GIVEN>{parent}</GIVEN>" for parent in parents.get(name, [])]
@@ -131,6 +133,34 @@ WARD = [
 ]
 
 
+# A table as a clinic's software exports it: codes, a measured temperature, one line for several equal cases.
+TRIAGE = {"Season": ["winter", "summer"], "Temperature": ["normal", "raised", "high"], "Cough": ["no", "yes"],
+          "SentHome": ["no", "yes"]}
+TRIAGE_PARENTS = {"Temperature": ["Season"], "Cough": ["Season"], "SentHome": ["Temperature", "Cough"]}
+TRIAGE_PROPERTIES = {"Temperature": ["ballast.column = temp_c", "ballast.cuts = 37.5 38.5"]}
+TRIAGE_CODES = """variable,outcome,code
+Season,winter,W
+Season,summer,S
+Cough,no,0
+Cough,yes,1
+SentHome,no,N
+SentHome,yes,Y
+"""
+TRIAGE_CASES = """Season,temp_c,Cough,SentHome,n,ward
+W,36.8,0,Y,14,A
+W,37.9,1,Y,9,A
+W,38.9,1,N,6,A
+W,39.4,1,N,2,B
+W,37.2,1,Y,11,B
+W,38.6,0,N,3,B
+S,36.6,0,Y,21,A
+S,37.4,1,Y,5,A
+S,37.5,0,Y,4,B
+S,38.2,1,N,2,B
+S,39.0,0,N,1,B
+"""
+
+
 def ward_table(rng, name, labels, parents):
     outcomes = {n: k for n, k, _ in WARD}
     rows = []
@@ -150,6 +180,9 @@ def main(folder):
     write(folder / "clinic-truth.xml", "Walk-in clinic, the truth behind cases.csv (invented)", CLINIC, CLINIC_PARENTS, TRUTH.get)
     write(folder / "clinic-rival-a.xml", "Walk-in clinic, rival A: infection alone (invented)", CLINIC, RIVAL_A)
     write(folder / "clinic-rival-b.xml", "Walk-in clinic, rival B: three more arcs (invented)", CLINIC, RIVAL_B)
+    write(folder / "triage.xml", "Triage desk (invented)", TRIAGE, TRIAGE_PARENTS, properties=TRIAGE_PROPERTIES)
+    (folder / "triage-codes.csv").write_text(TRIAGE_CODES, encoding="utf-8")
+    (folder / "triage-cases.csv").write_text(TRIAGE_CASES, encoding="utf-8")
     rng = random.Random(20)
     tables = {name: ward_table(rng, name, labels, parents) for name, labels, parents in WARD}
     write(folder / "ward.xml", "Hospital ward (invented)", {name: DEGREES[k] for name, k, _ in WARD},

@@ -59,41 +59,79 @@ def _parts_of(text):
 
 
 class Table:
-    """Records as codes; -1 is a missing cell. Each record's place in the file is kept when others are dropped."""
+    """Records as codes; -1 is a missing cell. Each record's place is kept when others are dropped.
 
-    def __init__(self, path, network, missing=("", "NA")):
-        self.path = path
-        with open(path, encoding="utf-8", newline="") as file:
-            header, *lines = csv.reader(file)
-        columns = [header.index(name) for name in network.outcomes]
-        codes = [{label: k for k, label in enumerate(labels)} for labels in network.outcomes.values()]
-        for code, labels in zip(codes, network.outcomes.values()):
-            code.update({text: -1 for text in missing if text not in labels})
-        self.codes = np.array([[code[line[c]] for code, c in zip(codes, columns)] for line in lines],
-                              dtype=np.int64).reshape(len(lines), len(columns))
-        self.places = np.arange(len(lines), dtype=np.uint64)
-        self.ignored = [name for name in header if name not in network.outcomes]
-        self.missing = {name: int(n) for name, n in zip(network.outcomes, (self.codes < 0).sum(axis=0)) if n}
-        whole = (self.codes >= 0).all(axis=1)
-        self.dropped = int((~whole).sum())
-        self.codes, self.places = self.codes[whole], self.places[whole]
+    A line of whole weight w is w records, one behind the other; under fractional weights lines stay lines. Several paths are one table.
+    policy: "drop" leaves incomplete records out, "family" keeps them. unrecorded: variables without a column.
+    """
+
+    def __init__(self, paths, network, missing=("", "NA"), policy="drop", weight=None, fold_column=None, unrecorded=()):
+        self.paths = [paths] if isinstance(paths, str) else list(paths)
+        self.path = self.paths[0]
+        self.unrecorded = set(unrecorded)
+        names = list(network.outcomes)
+        self.ignored, codes, weights, labels = [], [], [], []
+        for path in self.paths:
+            with open(path, encoding="utf-8", newline="") as file:
+                header, *lines = csv.reader(file)
+            columns = {name: header.index(name) for name in names if name not in self.unrecorded}
+            used = {weight, fold_column, *names}
+            self.ignored += [name for name in header if name not in used and name not in self.ignored]
+            codes += [[_code(network, name, line, columns, missing) for name in names] for line in lines]
+            weights += [float(line[header.index(weight)]) if weight else 1.0 for line in lines]
+            labels += [line[header.index(fold_column)] if fold_column else "" for line in lines]
+        self._take(names, np.array(codes, dtype=np.int64).reshape(len(codes), len(names)), np.array(weights), labels, policy)
+
+    def _take(self, names, codes, weights, labels, policy):
+        self.missing = {name: int(n) for name, n in zip(names, (codes == -1).sum(axis=0)) if n}
+        self.fractional = bool((weights != np.floor(weights)).any())
+        times = np.ones(len(codes), dtype=int) if self.fractional else weights.astype(int)
+        self.weights = np.round(weights * 2 ** 32) / 2 ** 32 if self.fractional else np.ones(times.sum())
+        self.codes = np.repeat(codes, times, axis=0)
+        self.labels = np.repeat(np.array(labels, dtype=object), times)
+        self.places = np.arange(len(self.codes), dtype=np.uint64)
+        whole = (self.codes != -1).all(axis=1)
+        self.dropped = self.incomplete = 0
+        if policy == "drop":
+            self.dropped = int((~whole).sum())
+            for key in ("codes", "labels", "places", "weights"):
+                setattr(self, key, getattr(self, key)[whole])
+        else:
+            self.incomplete = int((~whole).sum())
+
+
+def _code(network, name, line, columns, missing):
+    """The code of a cell; -1 is missing, -2 of a variable that nobody recorded."""
+    if name not in columns:
+        return -2
+    text, labels = line[columns[name]], network.outcomes[name]
+    return -1 if text in missing and text not in labels else labels.index(text)
+
+
+def touches(network, name, variables):
+    """Whether a family holds one of the variables."""
+    return name in variables or any(parent in variables for parent in network.parents[name])
 
 
 def where(network, table):
-    """For each family the row and the cell that each record falls in."""
+    """For each family the row and the cell that each record falls in; -1 where a cell of the family is missing."""
     column = {name: table.codes[:, v] for v, name in enumerate(network.outcomes)}
     found = {}
     for name in network.outcomes:
         row = np.zeros(len(table.codes), dtype=np.int64)
+        known = column[name] >= 0
         for parent in network.parents[name]:
             row = row * len(network.outcomes[parent]) + column[parent]
-        found[name] = (row, column[name])
+            known = known & (column[parent] >= 0)
+        found[name] = (np.where(known, row, -1), np.where(known, column[name], -1))
     return found
 
 
-def tally(network, places, chosen=slice(None)):
+def tally(network, places, chosen=None, weights=None):
+    """Counts of the chosen records (a mask), or of all."""
     counts = {}
     for name, (row, outcome) in places.items():
+        known = row >= 0 if chosen is None else (row >= 0) & chosen
         counts[name] = np.zeros(network.shape(name))
-        np.add.at(counts[name], (row[chosen], outcome[chosen]), 1)
+        np.add.at(counts[name], (row[known], outcome[known]), 1 if weights is None else weights[known])
     return counts

@@ -1,9 +1,9 @@
 /* csv_driver DOMAIN TABLE [OPTION VALUE]...: prints the codes of a table's records, for tests in other languages.
  *
- * DOMAIN is a text file, one line a variable: its name and its outcomes with tabs between. TABLE may be "-". The options
- * are those of the program: --missing stop|drop, --missing-label TEXT, --delimiter CHARACTER, and the flags --strict,
- * --redact, --allow-absent. A record is a line: its place, then a code a variable, "-" where it is missing, "~" without a
- * column. What the library says goes to standard error as the program would print it; the exit status is the program's. */
+ * DOMAIN is a text file, one line a variable: its name and its outcomes with tabs between. TABLE may be "-". The options are
+ * those of the program: --missing stop|drop|family, --missing-label TEXT, --delimiter CHARACTER, --weight COLUMN, --codebook FILE,
+ * and the flags --strict, --redact, --allow-absent. A record is a line: its place, then a code a variable, "-" where it is missing,
+ * "~" without a column, and its weight where there are weights, in units of 2^-32. What the library says goes to standard error as the program would print it, and so does the exit status. */
 #include "ballast/formats.h"
 
 #include <inttypes.h>
@@ -15,7 +15,9 @@ enum { MOST_VARIABLES = 4096, MOST_OUTCOMES = 70000, MOST_MISSING_LABELS = 16 };
 
 static const char *outcomes[MOST_OUTCOMES];
 static bal_variable_spec variables[MOST_VARIABLES];
-static const char *missing_labels[MOST_MISSING_LABELS];
+static const char *missing_labels[16];
+static const char *codebook_path;
+static const bal_missing policies[] = {BAL_MISSING_STOP, BAL_MISSING_DROP, BAL_MISSING_FAMILY};
 
 static void tell(void *context, bal_severity severity, const bal_error *notice) {
     static const char *const prefixes[] = {"note: ", "warning: ", ""};
@@ -68,20 +70,15 @@ static void read_options(int n, char **arguments, bal_table_options *options) {
     options->missing_labels = missing_labels;
     for (int i = 0; i < n; i++) {
         const char *name = arguments[i], *value = i + 1 < n ? arguments[i + 1] : "";
-        if (strcmp(name, "--strict") == 0) {
-            options->strict = true;
-        } else if (strcmp(name, "--redact") == 0) {
-            options->redact = true;
-        } else if (strcmp(name, "--allow-absent") == 0) {
-            options->allow_absent = true;
-        } else {
-            i++;
-            if (strcmp(name, "--missing") == 0 && strcmp(value, "drop") == 0) options->missing = BAL_MISSING_DROP;
-            else if (strcmp(name, "--delimiter") == 0) options->delimiter = value[0] == '\\' ? '\t' : value[0];
-            else if (strcmp(name, "--missing-label") == 0 && options->n_missing_labels < MOST_MISSING_LABELS)
-                missing_labels[options->n_missing_labels++] = value;
-            else exit(2);
-        }
+        if (strcmp(name, "--strict") == 0) options->strict = true;
+        else if (strcmp(name, "--redact") == 0) options->redact = true;
+        else if (strcmp(name, "--allow-absent") == 0) options->allow_absent = true;
+        else if (strcmp(name, "--missing") == 0) options->missing = policies[(value[0] == 'd') + 2 * (value[0] == 'f')], i++;
+        else if (strcmp(name, "--weight") == 0) options->weight = value, i++;
+        else if (strcmp(name, "--codebook") == 0) codebook_path = value, i++;
+        else if (strcmp(name, "--delimiter") == 0) options->delimiter = value[0] == '\\' ? '\t' : value[0], i++;
+        else if (strcmp(name, "--missing-label") == 0 && options->n_missing_labels < 16) missing_labels[options->n_missing_labels++] = value, i++;
+        else exit(2);
     }
 }
 
@@ -94,6 +91,7 @@ static void print_block(const bal_block *block) {
             else if (code == BAL_NONE) (void)fputs(" -", stdout);
             else (void)printf(" %zu", code);
         }
+        if (block->weights) (void)printf(" %.0f", block->weights[t] * 0x1p32);
         (void)putchar('\n');
     }
 }
@@ -103,7 +101,8 @@ static void print_summary(const bal_source *source, size_t n) {
     bal_file_facts facts;
     bal_source_summary_get(source, &summary);
     bal_table_facts(source, &facts);
-    (void)printf("records %" PRIu64 " dropped %" PRIu64 " missing", summary.records, summary.dropped);
+    (void)printf("records %" PRIu64 " dropped %" PRIu64 " incomplete %" PRIu64 " weight %.17g missing", summary.records, summary.dropped,
+                 summary.incomplete, summary.weight);
     for (size_t v = 0; v < n; v++) (void)printf(" %" PRIu64, summary.missing[v]);
     (void)printf("\n%s %" PRIu64 " %s\n", facts.name, facts.bytes, facts.sha256);
 }
@@ -118,10 +117,13 @@ int main(int n_arguments, char **arguments) {
     read_options(n_arguments - 3, arguments + 3, &options);
     options.notices = &notices;
     bal_domain *domain = NULL;
+    bal_codebook *codebook = NULL;
     bal_source *source = NULL;
     bal_error err = {0};
     bal_block block = {.n_records = 1};
     bal_status status = bal_domain_create(variables, n, &domain, &err);
+    if (status == BAL_OK && codebook_path) status = bal_codebook_read(domain, codebook_path, &notices, &codebook, NULL, &err);
+    options.codebook = codebook;
     if (status == BAL_OK) status = bal_table_open(domain, arguments[2], &options, &source, &err);
     while (status == BAL_OK && block.n_records > 0) {
         status = bal_source_next(source, &block, &err);
@@ -129,6 +131,7 @@ int main(int n_arguments, char **arguments) {
     }
     if (status == BAL_OK) print_summary(source, n);
     bal_source_free(source);
+    bal_codebook_free(codebook);
     bal_domain_free(domain);
     free(text);
     return finish(status, &err, told);

@@ -13,7 +13,7 @@ import numpy as np
 from case_files import tally, where
 from exact import tails
 from heldout_model import HeldOut
-from mpmath import mpf
+from mpmath import loggamma, mpf, workdps
 from prior_model import scale, strengths, unit_pseudo_counts
 from scipy import special
 
@@ -27,11 +27,25 @@ def log_marginal_likelihood(alpha, counts):
     Herskovits 1992 and Heckerman et al. 1995 without a gamma function."""
     rows = zip(np.append(alpha.ravel(), alpha.sum(axis=1)), np.append(counts.ravel(), counts.sum(axis=1)))
     sign = [1.0] * alpha.size + [-1.0] * len(alpha)
-    return math.fsum(s * math.fsum(np.log(a + np.arange(int(n)))) for s, (a, n) in zip(sign, rows) if n > 0)
+    return math.fsum(s * log_rising(a, n) for s, (a, n) in zip(sign, rows) if n > 0)
+
+
+def log_rising(a, n):
+    """ln of the rising factorial; a fraction of a record takes mpmath's gamma function."""
+    if n == int(n):
+        return math.fsum(np.log(a + np.arange(int(n))))
+    with workdps(40):
+        return float(loggamma(mpf(a) + mpf(n)) - loggamma(mpf(a)))
+
+
+def is_whole(counts):
+    return all((n == np.floor(n)).all() for n in counts.values())
 
 
 def leave_one_out(alpha, counts):
-    """Every record predicted from all the others (Geisser 1975); a sum over families."""
+    """Every record predicted from all the others (Geisser 1975); a sum over families. None when some count is not whole."""
+    if not is_whole(counts):
+        return None
     terms = []
     for name, n in counts.items():
         rest = alpha[name].sum(axis=1, keepdims=True) + (n.sum(axis=1, keepdims=True) - 1)
@@ -93,16 +107,17 @@ def file_facts(path):
     return {"file": os.path.basename(path), "bytes": len(content), "sha256": hashlib.sha256(content).hexdigest()}
 
 
-def head(command, network, table, records):
-    inputs = [file_facts(network.path)] + ([file_facts(table.path)] if table else [])
+def head(command, network, table, records, test=None):
+    paths = [network.path] + (table.paths if table else []) + (test.paths if test else [])
+    weight = math.fsum(table.weights) if table else records
     missing = [{"variable": name, "records": n} for name, n in table.missing.items()] if table else []
-    return {"ballast": {"schema": 1, "command": command}, "inputs": inputs, "network": network.facts(),
-            "data": {"records": records, "weight": records, "dropped": table.dropped if table else 0,
+    return {"ballast": {"schema": 1, "command": command}, "inputs": [file_facts(path) for path in paths], "network": network.facts(),
+            "data": {"records": records, "weight": weight, "dropped": table.dropped if table else 0,
                      "ignored_columns": table.ignored if table else [], "missing": missing}}
 
 
 def basis(records):
-    return "prior" if records == 0 else "few" if records <= 4 else "data"
+    return "prior" if records == 0 else "few" if records < 5 else "data"
 
 
 def expected_row(alpha, counts, level, given):
@@ -125,9 +140,9 @@ def expected_families(network, alpha, counts, level):
                       for a, n, given in zip(alpha[name], counts[name], network.given(name))]} for name in network.outcomes]
 
 
-def expected_others(network, counts, used, got):
+def expected_others(network, counts, used, got, records):
     """Leave-one-out of the other priors; the program's ESS of BDeu is taken once it has been found among the roundings."""
-    records = next(iter(counts.values())).sum()
+    whole = is_whole(counts)
     listed = []
     for kind in PRIORS:
         usable = kind != "expert" or (network.row_ess.keys() == network.outcomes.keys() == network.tables.keys()
@@ -142,7 +157,7 @@ def expected_others(network, counts, used, got):
             ess = pick(next((o["ess"] for o in got if o["kind"] == "bdeu"), None),
                        strengths(unit, counts, "marginal-likelihood"))
         listed.append({"kind": kind, "ess": ess,
-                       "loo_per_record": leave_one_out(scale(unit, ess or 1), counts) / records if records else None})
+                       "loo_per_record": leave_one_out(scale(unit, ess or 1), counts) / records if records and whole else None})
     return listed
 
 
@@ -150,37 +165,55 @@ def pick(got, allowed):
     return got if got in allowed else allowed[len(allowed) // 2]
 
 
-def expected_fit(network, table, prior, got, level=0.95, folds=10, seed=1, counts=None):
-    """The JSON of `fit`. prior: {"kind", "strength" or "by", "row_ess", "floor"}; got: the program's, read only to settle
-    a rounding that may fall either way."""
+def expected_fit(network, table, prior, got, level=0.95, split=None, counts=None, test=None):
+    """The JSON of `fit`. prior: {"kind", "strength" or "by", "row_ess", "floor", "carry"}; split: as parts_of has it, or None for no
+    comparison; test: the table that a split of method "test" predicts; got: the program's, read only to settle a rounding that may
+    fall either way."""
     if counts is None:
-        counts = tally(network, where(network, table))
+        counts = tally(network, where(network, table), weights=table.weights)
+    records, earlier, old = _records(table, counts), 0, None
+    if prior["kind"] == "carried":
+        weight = prior.get("carry", 1)
+        old = {name: weight * n for name, n in network.counts.items()}
+        earlier = weight * float(network.properties["ballast.records"])
+        counts = {name: old[name] + n for name, n in counts.items()}
     unit = unit_pseudo_counts(network, prior)
     ess_kind = prior["kind"] == "bdeu"
     strength = prior.get("strength")
     if strength is None:
         strength = pick(got["prior"]["ess" if ess_kind else "scale"], strengths(unit, counts, prior["by"]))
     alpha = scale(unit, strength)
-    records = next(iter(counts.values())).sum()
     families = expected_families(network, alpha, counts, level)
+    score = math.fsum(f["log_marginal_likelihood"] for f in families)
     loo = leave_one_out(alpha, counts)
     heldout = None
-    if table and folds and records:
-        heldout = HeldOut(network, table, prior, folds, seed).nearest(got["heldout"]["bayes"]["log_likelihood"])
+    if split and split["method"] == "test" and loo is not None:
+        heldout = HeldOut(network, test, prior, split, counts)
+    elif split and table and records and loo is not None:
+        heldout = HeldOut(network, table, prior, split, old)
+    if heldout:
+        heldout = heldout.nearest(got["heldout"]["bayes"]["log_likelihood"])
     chosen = prior.get("by", "given")
-    facts = head("fit", network, table, records)
-    # A structural zero is no free parameter: a row has as many as outcomes that can happen, less one.
-    facts["network"] = dict(facts["network"], free_parameters=sum(int((a > 0).sum() - len(a)) for a in alpha.values()))
-    return dict(facts,
+    scaled = prior["kind"] not in ("bdeu", "carried")
+    told = head("fit", network, table, records, test)
+    told["data"]["earlier"] = earlier
+    told["network"]["free_parameters"] = int(sum(((a > 0).sum(axis=1) - 1).sum() for a in alpha.values()))  # a structural zero is none
+    predictive = score - math.fsum(log_marginal_likelihood(alpha[name], old[name]) for name in old) if old else None
+    return dict(told,
                 prior={"kind": prior["kind"], "ess": strength if ess_kind else None,
-                       "ess_chosen": chosen if ess_kind else None, "strength": None, "lean": None, "scale": None if ess_kind else strength,
-                       "scale_chosen": None if ess_kind else chosen, "row_ess": prior.get("row_ess"),
+                       "ess_chosen": chosen if ess_kind else None, "strength": None, "lean": None, "scale": strength if scaled else None,
+                       "scale_chosen": chosen if scaled else None, "row_ess": prior.get("row_ess"),
                        "floor": prior.get("floor", 0) if prior["kind"] == "expert" else None},
-                level=level,
-                log_marginal_likelihood=math.fsum(f["log_marginal_likelihood"] for f in families), log_predictive=None,
-                loo={"log_likelihood": loo, "per_record": loo / records if records else None},
-                other_priors=expected_others(network, counts, prior["kind"], got["other_priors"]),
+                level=level, log_marginal_likelihood=score, log_predictive=predictive,
+                composite=bool(table and table.incomplete),
+                loo={"log_likelihood": loo, "per_record": loo / (records + earlier) if loo is not None and records + earlier else None},
+                other_priors=expected_others(network, counts, prior["kind"], got["other_priors"], records + earlier),
                 heldout=heldout, families=families)
+
+
+def _records(table, counts):
+    """Records that were counted, in some family or in all."""
+    return float(len(table.codes)) if table else next(iter(counts.values())).sum()
 
 
 def expected_check(network, table, counts=None):

@@ -16,6 +16,8 @@ def unit_pseudo_counts(network, prior):
             unit[name] = np.ones((q, r))
         elif prior["kind"] == "jeffreys":    # Jeffreys 1946
             unit[name] = np.full((q, r), 0.5)
+        elif prior["kind"] == "carried":
+            unit[name] = network.pseudo_counts[name]
         else:
             theta = network.tables[name] / network.tables[name].sum(axis=1, keepdims=True)
             theta = (1 - prior.get("floor", 0)) * theta + prior.get("floor", 0) / r
@@ -84,7 +86,7 @@ def log_pochhammer(alpha, n):
     few = 16
     value = special.gammaln(alpha + n) - special.gammaln(alpha)
     product = np.prod([np.where(i < n, alpha + i, 1.0) for i in range(few)], axis=0)
-    return np.where(n <= few, np.log(product), value)
+    return np.where((n <= few) & (n == np.floor(n)), np.log(product), value)
 
 
 def _distinct(pairs):

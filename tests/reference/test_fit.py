@@ -39,8 +39,20 @@ EXPERT = [(["--prior", "expert", "--row-ess", "7.5"], {"kind": "expert", "streng
 CARRIED_WORTH = [(["--prior", "expert"], {"kind": "expert", "strength": 1.0}),
                  (["--prior", "expert", "--scale", "auto"], {"kind": "expert", "by": "marginal-likelihood"}),
                  (["--prior", "expert", "--scale", "2.5"], {"kind": "expert", "strength": 2.5})]
-SPLITS = [(10, 1), (2, 7), (3, 2 ** 64 - 1), (25, 12345), (10, 0)]
+SPLITS = [{"method": "folds", "folds": 10, "seed": 1},
+          {"method": "folds", "folds": 2, "seed": 7, "repeats": 3},
+          {"method": "holdout", "share": 0.3, "seed": 4},
+          {"method": "folds", "folds": 3, "seed": 2 ** 64 - 1},
+          {"method": "holdout", "share": 0.55, "seed": 12345, "repeats": 4},
+          {"method": "folds", "folds": 25, "seed": 12345},
+          {"method": "folds", "folds": 10, "seed": 0}]
 LEVELS = [0.95, 0.5, 0.99]
+
+
+def split_words(split):
+    """The options that ask for it."""
+    words = ["--folds", split["folds"]] if split["method"] == "folds" else ["--holdout", repr(split["share"])]
+    return words + ["--seed", split["seed"]] + (["--repeats", split["repeats"]] if "repeats" in split else [])
 
 
 def compare(trial, name, wanted, got):
@@ -143,12 +155,12 @@ def compare_with_model(trial, program, case, turn):
     table = Table(table_path, network, ("", "NA", "?") if words else ("", "NA"))
     compare(trial, name + " check", expected_check(network, table), program.json("check", network_path, table_path, *words))
     for prior_words, prior in priors:
-        folds, seed = SPLITS[turn % len(SPLITS)]
+        split = SPLITS[turn % len(SPLITS)]
         level = LEVELS[turn % len(LEVELS)]
-        got = program.json("fit", network_path, table_path, *words, *prior_words, "--folds", folds, "--seed", seed,
-                           "--level", level, "-o", "fitted.xml")
-        title = "%s %s folds %d seed %d level %g" % (name, " ".join(prior_words) or "default", folds, seed, level)
-        wanted = expected_fit(network, table, prior, got, level, folds, seed)
+        got = program.json("fit", network_path, table_path, *words, *prior_words, *split_words(split), "--level", level,
+                           "-o", "fitted.xml")
+        title = "%s %s level %g" % (name, " ".join(map(str, [*prior_words, *split_words(split)])), level)
+        wanted = expected_fit(network, table, prior, got, level, split)
         compare(trial, title, wanted, got)
         check_file(trial, title, Network(os.path.join(program.folder, "fitted.xml")), got, "mean")
         turn += 1
@@ -221,6 +233,100 @@ def _bytes(program, name):
         return file.read()
 
 
+# ---------------------------------------------------------------- carried, weighted, tables of their own, fold columns
+
+def check_carried(trial, program, case, turn):
+    """A fit to the first records carried on with the others, which are also held out; the old counts whole and made lighter."""
+    name, network_path, table_path, priors, words = case
+    missing = ("", "NA", "?") if words else ("", "NA")
+    with open(table_path, encoding="utf-8") as file:
+        header, *lines = file.read().splitlines()
+    cut = len(lines) // 3
+    for part, chosen in (("old.csv", lines[:cut]), ("new.csv", lines[cut:])):
+        with open(os.path.join(program.folder, part), "w", encoding="utf-8") as file:
+            file.write("\n".join([header] + chosen + [""]))
+    program.run("fit", network_path, "old.csv", *words, *priors[turn % len(priors)][0], "--quiet", "--folds", 0, "-o", "old.xml")
+    network = Network(os.path.join(program.folder, "old.xml"))
+    table = Table(os.path.join(program.folder, "new.csv"), network, missing)
+    for carry in (1, 0.5, 0, 0.3):
+        split = SPLITS[turn % len(SPLITS)]
+        got = program.json("fit", "old.xml", "new.csv", *words, "--prior", "carried", "--carry", carry, *split_words(split), "-o", "both.xml")
+        prior = {"kind": "carried", "strength": 1.0, "carry": carry}
+        compare(trial, "%s carried %g" % (name, carry), expected_fit(network, table, prior, got, split=split), got)
+        turn += 1
+    got = program.json("fit", "old.xml", "--prior", "carried", "--test", "new.csv", *words)
+    wanted = expected_fit(network, None, {"kind": "carried", "strength": 1.0}, got, split={"method": "test"}, test=table,
+                          counts={name: np.zeros_like(n) for name, n in network.counts.items()})
+    compare(trial, name + " carried, test table", wanted, got)
+
+
+def check_test_table(trial, program, case, turn):
+    """One half of the records predicts the other; under the expert's zeros too, which the other half may contradict."""
+    name, network_path, table_path, priors, words = case
+    missing = ("", "NA", "?") if words else ("", "NA")
+    network = Network(network_path)
+    paths = [os.path.join(program.folder, half) for half in ("even.csv", "odd.csv")]
+    with open(table_path, encoding="utf-8") as file:
+        header, *lines = file.read().splitlines()
+    for i, path in enumerate(paths):
+        with open(path, "w", encoding="utf-8") as file:
+            file.write("\n".join([header] + lines[i::2] + [""]))
+    training, test = (Table(path, network, missing) for path in paths)
+    prior_words, prior = priors[turn % len(priors)]
+    got = program.json("fit", network_path, "even.csv", *words, *prior_words, "--test", "odd.csv")
+    compare(trial, name + " test table", expected_fit(network, training, prior, got, split={"method": "test"}, test=test), got)
+    both = program.json("fit", network_path, "even.csv", "odd.csv", *words, *prior_words, "--folds", 4, "--seed", turn)
+    split = {"method": "folds", "folds": 4, "seed": turn}
+    compare(trial, name + " two tables", expected_fit(network, Table(paths, network, missing), prior, both, split=split), both)
+
+
+def weighted_copy(path, table_path, seed, weights, labels):
+    """The table with a weight and a label behind each line."""
+    rng = random.Random(seed)
+    with open(table_path, encoding="utf-8") as file:
+        header, *lines = file.read().splitlines()
+    with open(path, "w", encoding="utf-8") as file:
+        told = ["%s,%s,%s" % (line, rng.choice(weights), rng.choice(labels)) for line in lines]
+        file.write("\n".join([header + ",times,where"] + told + [""]))
+
+
+def check_weighted(trial, program, case, turn):
+    """Whole weights, fractions, labels of a fold column, incomplete records by family, a variable that nobody recorded."""
+    name, network_path, table_path, priors, words = case
+    missing = ("", "NA", "?") if words else ("", "NA")
+    network = Network(network_path)
+    path = os.path.join(program.folder, "weighted.csv")
+    prior_words, prior = priors[turn % len(priors)]
+    weighted_copy(path, table_path, turn, [0, 1, 1, 2, 7], ["north", "south", "\u00f6st", "west 2"])
+    options = dict(missing=missing, weight="times", fold_column="where")
+    words = [*words, "--weight", "times"]
+    labels = len(set(Table(path, network, **options).labels))
+    folds = {"method": "folds", "folds": 10, "seed": 1}
+    first = next(iter(network.outcomes))
+    tries = [([], {}, folds), (["--holdout", "0.4", "--repeats", "2"], {}, {"method": "holdout", "share": 0.4, "repeats": 2}),
+             (["--unrecorded", first], {"unrecorded": [first]}, folds)]
+    if labels > 1:
+        tries.append((["--fold-column", "where"], {}, {"method": "fold-column", "labels": labels}))
+    if "drop" in words:
+        tries.append(([], {"policy": "family"}, folds))
+    for more, how, split in tries:
+        table = Table(path, network, **dict(options, **how))
+        if split["method"] != "fold-column":
+            table.ignored = table.ignored + ["where"]
+        used = [how.get("policy", word) if word == "drop" else word for word in words]
+        got = program.json("fit", network_path, "weighted.csv", *used, *prior_words, *more)
+        wanted = expected_fit(network, table, prior, got, split=split)
+        del wanted["data"]["missing"], wanted["data"]["dropped"]  # lines, not records
+        compare(trial, "%s weighted %s %s" % (name, " ".join(more), how), wanted, got)
+    weighted_copy(path, table_path, turn, ["0.25", "1.3", "0", "2e-3", "5"], ["north"])
+    if prior.get("by") == "leave-one-out":
+        return
+    table = Table(path, network, missing, weight="times")
+    got = program.json("fit", network_path, "weighted.csv", *words, *prior_words)
+    wanted = expected_fit(network, table, prior, got, split={"method": "folds", "folds": 10})
+    compare(trial, name + " fractions", wanted, got)
+
+
 def check_shuffled(trial, program, case):
     """The order of records changes no table and no score."""
     name, network, table, _, words = case
@@ -283,6 +389,14 @@ def main():
             before = trial.passed
             turn = compare_with_model(trial, program, case, turn)
             print("%6d  %s" % (trial.passed - before, case[0]))
+        before = trial.passed
+        for number, case in enumerate(cases):
+            if case[0].startswith(("college", "ucb", "titanic")):
+                continue
+            check_test_table(trial, program, case, number)
+            check_carried(trial, program, case, number)
+            check_weighted(trial, program, case, number)
+        print("%6d  carried, weighted, other tables" % (trial.passed - before))
         before = trial.passed
         for case in cases:
             if not case[0].startswith(("college", "random 0")):
