@@ -119,7 +119,8 @@ typedef struct bal_groups bal_groups;
 BAL_API BAL_MUST_CHECK bal_status bal_groups_create(bal_groups **out, bal_error *err);
 BAL_API void bal_groups_free(bal_groups *groups);
 
-/** How a table is read. Start from bal_table_options_defaults(). */
+/** How a table is read. Start from bal_table_options_defaults(). What it points to outlives the source: the table may be opened
+ *  again to be read in parts. */
 typedef struct bal_table_options {
     char delimiter;             /* 0 = tab for .tsv or a tab in the header, else comma */
     bool strict;                /* refuse columns that no variable has */

@@ -110,16 +110,20 @@ bool bali_input_can_rewind(const bali_input *input) {
 }
 
 bal_status bali_input_rewind(bali_input *input, bal_error *err) {
+    return bali_input_seek(input, 0, err);
+}
+
+bal_status bali_input_seek(bali_input *input, uint64_t position, bal_error *err) {
     if (!input->regular) {
         bal_status status = bal_error_set(err, BAL_ERR_IO, "cannot-reread",
                                           "has to be read more than once, and a pipe can be read only once; save it to a file first");
         bal_error_place(err, bali_input_name(input), 0, 0);
         return status;
     }
-    if (lseek(input->descriptor, input->start, SEEK_SET) < 0)
+    if (lseek(input->descriptor, input->start + (off_t)position, SEEK_SET) < 0)
         return bali_system_error(err, "cannot-reread", bali_input_name(input), errno, "cannot be read again",
                                  "save it to a file first");
-    input->position = 0;
+    input->position = position;
     return BAL_OK;
 }
 

@@ -32,6 +32,9 @@ bool bali_input_can_rewind(const bali_input *input);
 /** Back to the start. Fails: IO "cannot-reread" for a pipe (the message says: save it to a file first). */
 BAL_MUST_CHECK bal_status bali_input_rewind(bali_input *input, bal_error *err);
 
+/** To a byte of a regular file, counted from where it stood at the opening. Fails: as _rewind. */
+BAL_MUST_CHECK bal_status bali_input_seek(bali_input *input, uint64_t position, bal_error *err);
+
 /** The name as the user gave it, "standard input" for "-"; borrowed. */
 const char *bali_input_name(const bali_input *input);
 /** The base name for provenance: never a path. Borrowed. */

@@ -59,6 +59,16 @@ bal_status bali_gzip_rewind(bali_gzip *gzip, bal_error *err) {
     return BAL_OK;
 }
 
+bool bali_gzip_is_packed(const bali_gzip *gzip) {
+    return gzip->is_gzip;
+}
+
+bal_status bali_gzip_seek(bali_gzip *gzip, uint64_t position, bal_error *err) {
+    gzip->n_magic = gzip->magic_at = 0;
+    gzip->given = position;
+    return bali_input_seek(gzip->input, position, err);
+}
+
 static bal_status read_medium(bali_gzip *gzip, char *bytes, size_t size, size_t *length, bal_error *err) {
     bal_status status = bali_input_read(gzip->input, bytes, size, length, err);
     if (status == BAL_OK && *length > 0 && gzip->watch.saw) gzip->watch.saw(gzip->watch.context, bytes, *length);

@@ -33,6 +33,12 @@ BAL_MUST_CHECK bal_status bali_gzip_create(bali_input *input, bali_gzip_watch wa
  */
 BAL_MUST_CHECK bal_status bali_gzip_read(bali_gzip *gzip, void *bytes, size_t size, size_t *length, bal_error *err);
 
+/** Whether the data are gzip. Known once something was read. */
+bool bali_gzip_is_packed(const bali_gzip *gzip);
+
+/** To a byte of data that are not gzip, something of which was read. Fails: as bali_input_seek. */
+BAL_MUST_CHECK bal_status bali_gzip_seek(bali_gzip *gzip, uint64_t position, bal_error *err);
+
 /** Back to the start. Fails: as bali_input_rewind. */
 BAL_MUST_CHECK bal_status bali_gzip_rewind(bali_gzip *gzip, bal_error *err);
 void bali_gzip_free(bali_gzip *gzip);

@@ -331,6 +331,40 @@ bal_status bali_csv_rewind(bali_csv *csv, bal_error *err) {
     return status == BAL_OK ? start(csv, err) : status;
 }
 
+uint64_t bali_csv_seekable_size(const bali_csv *csv) {
+    bool can = bali_csv_can_rewind(csv) && !bali_gzip_is_packed(csv->buffer.bytes);
+    return can ? bali_input_size(csv->buffer.input) : 0;
+}
+
+/* The window holds what comes after p, and a new line begins there. */
+static void stand_at(bali_csv_buffer *buffer, const char *p) {
+    buffer->at = buffer->cell = p;
+    buffer->line = buffer->cell_line = (bali_csv_line){.start = p, .number = 1};
+}
+
+bal_status bali_csv_seek(bali_csv *csv, uint64_t from, bal_error *err) {
+    bali_csv_buffer *buffer = &csv->buffer;
+    csv->cell_expected = false;
+    bal_status status = bali_csv_buffer_seek(buffer, from - 1, err);
+    for (bool more = true; status == BAL_OK && more;) {
+        const char *p = buffer->at;
+        while (p < buffer->end && *p != '\n' && *p != '\r') p++;
+        stand_at(buffer, p);
+        if (p == buffer->end) {
+            status = bali_csv_buffer_fill(buffer, &buffer->at, &more, err);
+            continue;
+        }
+        status = step_line_end(csv, &p, err);
+        stand_at(buffer, p);
+        break;
+    }
+    return status;
+}
+
+uint64_t bali_csv_offset(const bali_csv *csv) {
+    return bali_csv_buffer_position(&csv->buffer);
+}
+
 char bali_csv_delimiter(const bali_csv *csv) {
     return csv->delimiter;
 }

@@ -61,6 +61,18 @@ bool bali_csv_can_rewind(const bali_csv *csv);
 /** Back to the first cell. Fails: IO where the medium is a pipe, MEMORY. */
 BAL_MUST_CHECK bal_status bali_csv_rewind(bali_csv *csv, bal_error *err);
 
+/** The size of a file that can be read from any byte on: a regular one that is not compressed; else 0. */
+uint64_t bali_csv_seekable_size(const bali_csv *csv);
+/**
+ * Stands behind the first line end at or after the byte before from: at the first record that begins at or after it, as long as no
+ * quote is open there. from > 0; lines count from 1 there. At the end of the file nothing is left to read.
+ *
+ * Fails: IO; DATA "changed-while-read"; MEMORY.
+ */
+BAL_MUST_CHECK bal_status bali_csv_seek(bali_csv *csv, uint64_t from, bal_error *err);
+/** The byte of such a file at which the next cell begins. */
+uint64_t bali_csv_offset(const bali_csv *csv);
+
 char bali_csv_delimiter(const bali_csv *csv);
 /** The file's name as the user gave it; borrowed. */
 const char *bali_csv_name(const bali_csv *csv);

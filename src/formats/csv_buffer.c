@@ -87,6 +87,18 @@ bal_status bali_csv_buffer_rewind(bali_csv_buffer *buffer, bal_error *err) {
     return BAL_OK;
 }
 
+bal_status bali_csv_buffer_seek(bali_csv_buffer *buffer, uint64_t position, bal_error *err) {
+    bal_status status = bali_gzip_seek(buffer->bytes, position, err);
+    bali_hash_free(buffer->hash);
+    buffer->hash = NULL;
+    if (status == BAL_OK) start(buffer);
+    return status;
+}
+
+uint64_t bali_csv_buffer_position(const bali_csv_buffer *buffer) {
+    return bali_input_position(buffer->input) - (uint64_t)(buffer->end - buffer->at);
+}
+
 void bali_csv_buffer_close(bali_csv_buffer *buffer) {
     bali_gzip_free(buffer->bytes);
     bali_input_close(buffer->input);

@@ -35,6 +35,13 @@ typedef struct bali_csv_buffer {
 BAL_MUST_CHECK bal_status bali_csv_buffer_open(bali_csv_buffer *buffer, const char *path, size_t chunk_bytes,
                                                bal_error *err);
 BAL_MUST_CHECK bal_status bali_csv_buffer_rewind(bali_csv_buffer *buffer, bal_error *err);
+/**
+ * Stands at a byte of a file that is not compressed, with nothing at hand and lines counted from 1. The file is no longer hashed.
+ * Fails: IO.
+ */
+BAL_MUST_CHECK bal_status bali_csv_buffer_seek(bali_csv_buffer *buffer, uint64_t position, bal_error *err);
+/** Where in such a file the byte at hand stands. */
+uint64_t bali_csv_buffer_position(const bali_csv_buffer *buffer);
 void bali_csv_buffer_close(bali_csv_buffer *buffer);
 
 /**

@@ -1,35 +1,18 @@
 /* A table file as a source of blocks. */
+#include "formats/table_source.h"
+
 #include "base/memory.h"
 #include "formats/groups.h"
-#include "formats/table_reader.h"
-#include "formats/weights.h"
-#include "model/block.h"
 
 #include <math.h>
 #include <string.h>
-
-typedef struct table {
-    bal_source source;
-    char *path;
-    bali_table_reader reader;
-    bal_groups *groups; /* borrowed; NULL without a fold column */
-    size_t n;           /* records in the block */
-    uint64_t *places;   /* of each */
-    double *weights;    /* of each; NULL when every one is 1 */
-    uint32_t *numbers;  /* of its group */
-    uint64_t given, dropped, incomplete;
-    uint64_t end;            /* places gone over */
-    bali_weight_sum weight;  /* of the records given */
-    bool fractional, weighs; /* some weight is not whole; some weight is above 0 */
-    bool told_end;
-} table;
 
 bal_table_options bal_table_options_defaults(void) {
     return (bal_table_options){.missing = BAL_MISSING_STOP};
 }
 
 /* Says once that there is nothing to learn from. */
-static void tell_end(table *t) {
+static void tell_end(bali_table *t) {
     const bal_notices *notices = &t->reader.notices;
     bool nothing = t->given == 0 || (t->weights && t->weight.whole == 0 && t->weight.parts == 0);
     if (t->told_end || !nothing) return;
@@ -49,7 +32,7 @@ static void tell_end(table *t) {
 }
 
 /* Hands over what ended the reading, again and again if asked. */
-static bal_status fail(const table *t, bal_error *err) {
+static bal_status fail(const bali_table *t, bal_error *err) {
     const bal_error *failure = &t->reader.failure;
     if (!err) return failure->status;
     if (err->status == BAL_OK) *err = *failure;
@@ -57,7 +40,7 @@ static bal_status fail(const table *t, bal_error *err) {
 }
 
 /* The number of the record's group. Records that do not count get no number of their own, as where they are not there at all. */
-static bal_status take_number(table *t, bal_error *failure) {
+static bal_status take_number(bali_table *t, bal_error *failure) {
     const bali_text *label = &t->reader.group;
     uint32_t *number = &t->numbers[t->n];
     *number = 0;
@@ -70,7 +53,7 @@ static bal_status take_number(table *t, bal_error *failure) {
     return failure->status;
 }
 
-static bal_status too_heavy(const table *t, bal_error *failure) {
+static bal_status too_heavy(const bali_table *t, bal_error *failure) {
     bal_status status = bal_error_set(failure, BAL_ERR_DATA, "bad-weight",
                                       "the weights up to here sum to more than 2^53, beyond which counts are not exact; divide them all by "
                                       "one number");
@@ -79,7 +62,7 @@ static bal_status too_heavy(const table *t, bal_error *failure) {
 }
 
 /* Keeps the record at n, or not. Once there is a problem no record is given any more, but all are looked at. */
-static bal_status keep_record(table *t) {
+static bal_status keep_record(bali_table *t) {
     bali_table_reader *reader = &t->reader;
     if (reader->problems.first.status != BAL_OK) return BAL_OK;
     uint64_t place = t->end;
@@ -101,7 +84,7 @@ static bal_status keep_record(table *t) {
 }
 
 /* A table in which nothing counts is a mistake, unless it is empty. */
-static bal_status check_weights(const table *t, bal_error *failure) {
+static bal_status check_weights(const bali_table *t, bal_error *failure) {
     if (!t->weights || t->weighs || t->reader.place == 0) return BAL_OK;
     bal_status status = bal_error_set(failure, BAL_ERR_DATA, "no-weight", "no record has a weight above 0; is it the right column?");
     bal_error_place(failure, bali_csv_name(t->reader.csv), 0, 0);
@@ -109,7 +92,7 @@ static bal_status check_weights(const table *t, bal_error *failure) {
     return status;
 }
 
-static void hand_over(table *t, bal_block *block) {
+static void hand_over(bali_table *t, bal_block *block) {
     bool in_order = !t->weights && (t->n == 0 || t->places[t->n - 1] - t->places[0] == t->n - 1);
     *block = (bal_block){.n_records = t->n,
                          .n_columns = bal_domain_variables(t->source.domain),
@@ -121,32 +104,43 @@ static void hand_over(table *t, bal_block *block) {
                          .places = in_order ? NULL : t->places};
 }
 
+/* Whether the next record belongs to the next part. Blank lines that were met before it are read to their end here. */
+static bool at_bound(const bali_table *t) {
+    const bali_table_reader *reader = &t->reader;
+    return t->bound > 0 && !reader->held.text && reader->blank_lines == 0 && bali_csv_offset(reader->csv) >= t->bound;
+}
+
 static bal_status next(bal_source *source, bal_block *block, bal_error *err) {
-    table *t = (table *)source;
+    bali_table *t = (bali_table *)source;
     bali_table_reader *reader = &t->reader;
     if (reader->failure.status != BAL_OK) return fail(t, err);
     bal_status status = BAL_OK;
     t->n = 0;
     while (!reader->ended && t->n < reader->columns.capacity) {
+        if (at_bound(t)) {
+            reader->ended = true;
+            break;
+        }
         status = bali_table_read_record(reader, t->n);
         if (status != BAL_OK) break;
         if (!reader->ended) status = keep_record(t);
         if (status != BAL_OK) break;
     }
-    if (status == BAL_OK && reader->ended && reader->problems.first.status == BAL_OK) status = check_weights(t, &reader->failure);
+    bool whole = reader->ended && !t->is_part;
+    if (status == BAL_OK && whole && reader->problems.first.status == BAL_OK) status = check_weights(t, &reader->failure);
     if (status != BAL_OK || reader->problems.first.status != BAL_OK) {
         bali_missing_cells missing = {reader->missing, reader->incomplete, reader->place};
         bali_problems_conclude(&reader->problems, &missing, &reader->failure);
         return fail(t, err);
     }
     t->given += t->n;
-    if (reader->ended) tell_end(t);
+    if (whole) tell_end(t);
     hand_over(t, block);
     return BAL_OK;
 }
 
 static bal_status rewind_table(bal_source *source, bal_error *err) {
-    table *t = (table *)source;
+    bali_table *t = (bali_table *)source;
     if (t->reader.failure.status != BAL_OK || bali_table_reader_rewind(&t->reader) != BAL_OK) return fail(t, err);
     t->n = 0;
     t->given = t->dropped = t->incomplete = t->end = 0;
@@ -156,7 +150,7 @@ static bal_status rewind_table(bal_source *source, bal_error *err) {
 }
 
 static void locate(bal_source *source, uint64_t place, bal_error *err) {
-    const table *t = (const table *)source;
+    const bali_table *t = (const bali_table *)source;
     size_t record, line;
     bali_table_reader_find(&t->reader, t->path, place, &record, &line);
     bal_error_place(err, bali_csv_name(t->reader.csv), line, 0);
@@ -164,7 +158,7 @@ static void locate(bal_source *source, uint64_t place, bal_error *err) {
 }
 
 static void summary(const bal_source *source, bal_source_summary *out) {
-    const table *t = (const table *)source;
+    const bali_table *t = (const bali_table *)source;
     *out = (bal_source_summary){.records = t->given,
                                 .dropped = t->dropped,
                                 .incomplete = t->incomplete,
@@ -178,8 +172,9 @@ static void summary(const bal_source *source, bal_source_summary *out) {
 }
 
 static void free_table(bal_source *source) {
-    table *t = (table *)source;
+    bali_table *t = (bali_table *)source;
     bali_table_reader_close(&t->reader);
+    bali_table_notes_free(t);
     bali_free(t->places);
     bali_free(t->weights);
     bali_free(t->numbers);
@@ -188,9 +183,9 @@ static void free_table(bal_source *source) {
 }
 
 static const bali_source_methods methods = {
-    .next = next, .rewind = rewind_table, .locate = locate, .summary = summary, .free = free_table};
+    .next = next, .rewind = rewind_table, .locate = locate, .summary = summary, .free = free_table, .parts = &bali_table_parts};
 
-static bal_status fill(table *t, const char *path, const bal_table_options *options, bal_error *err) {
+static bal_status fill(bali_table *t, const char *path, const bal_table_options *options, bal_error *err) {
     size_t capacity = t->reader.columns.capacity;
     bool complete = true;
     t->path = bali_duplicate(path, strlen(path));
@@ -201,20 +196,29 @@ static bal_status fill(table *t, const char *path, const bal_table_options *opti
     return complete && t->path && t->places ? BAL_OK : bali_out_of_memory(err);
 }
 
-bal_status bal_table_open(const bal_domain *domain, const char *path, const bal_table_options *options, bal_source **out,
-                          bal_error *err) {
+bal_status bali_table_open(const bal_domain *domain, const char *path, const bal_table_options *options, bali_table **out, bal_error *err) {
     *out = NULL;
-    table *t = bali_allocate(1, sizeof *t);
+    bali_table *t = bali_allocate(1, sizeof *t);
     if (!t) return bali_out_of_memory(err);
     bali_source_init(&t->source, &methods, domain);
+    t->options = *options;
+    t->part_bytes = BALI_PART_BYTES;
     bal_status status = bali_table_reader_open(&t->reader, t->source.domain, path, options, err);
     if (status == BAL_OK) status = fill(t, path, options, err);
-    if (status == BAL_OK) *out = &t->source;
+    if (status == BAL_OK) *out = t;
     else bal_source_free(&t->source);
+    return status;
+}
+
+bal_status bal_table_open(const bal_domain *domain, const char *path, const bal_table_options *options, bal_source **out,
+                          bal_error *err) {
+    bali_table *t = NULL;
+    bal_status status = bali_table_open(domain, path, options, &t, err);
+    *out = t ? &t->source : NULL;
     return status;
 }
 
 void bal_table_facts(const bal_source *source, bal_file_facts *facts) {
     *facts = (bal_file_facts){0};
-    if (source->methods == &methods) bali_csv_facts(((const table *)source)->reader.csv, facts);
+    if (source->methods == &methods) bali_csv_facts(((const bali_table *)source)->reader.csv, facts);
 }

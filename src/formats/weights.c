@@ -26,6 +26,12 @@ void bali_weight_add(bali_weight_sum *sum, double weight) {
     sum->parts = parts & UINT32_MAX;
 }
 
+void bali_weight_join(bali_weight_sum *sum, const bali_weight_sum *more) {
+    uint64_t parts = sum->parts + more->parts;
+    sum->whole += more->whole + (parts >> 32);
+    sum->parts = parts & UINT32_MAX;
+}
+
 double bali_weight_value(const bali_weight_sum *sum) {
     return (double)sum->whole + (double)sum->parts / parts_of_one;
 }

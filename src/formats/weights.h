@@ -22,6 +22,7 @@ typedef struct bali_weight_sum {
 } bali_weight_sum;
 
 void bali_weight_add(bali_weight_sum *sum, double weight);
+void bali_weight_join(bali_weight_sum *sum, const bali_weight_sum *more);
 /** The sum, rounded once. */
 double bali_weight_value(const bali_weight_sum *sum);
 
