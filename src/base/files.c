@@ -168,7 +168,7 @@ static bal_status too_large(const bali_input *input, size_t limit, bal_error *er
 }
 
 /* Reads to the end or the limit, doubling the room; one byte more than the limit is looked for in a byte of its own. */
-static bal_status read_all(bali_input *input, size_t limit, char **bytes, size_t *length, bal_error *err) {
+static bal_status read_all(bali_input *input, size_t limit, bali_goes_on goes_on, char **bytes, size_t *length, bal_error *err) {
     size_t room = first_room(input, limit);
     *bytes = bali_allocate(room + 1, 1);
     if (!*bytes) return bali_out_of_memory(err);
@@ -180,7 +180,7 @@ static bal_status read_all(bali_input *input, size_t limit, char **bytes, size_t
         char beyond;
         if (*length < room) return BAL_OK;
         status = bali_input_read(input, &beyond, 1, &got, err);
-        if (status != BAL_OK || got == 0) return status;
+        if (status != BAL_OK || got == 0 || (goes_on && !goes_on(*bytes, *length))) return status;
         if (room == limit) return too_large(input, limit, err);
         size_t more = room <= limit / 2 ? room * 2 : limit;
         char *moved = bali_reallocate(*bytes, more + 1, 1);
@@ -192,6 +192,10 @@ static bal_status read_all(bali_input *input, size_t limit, char **bytes, size_t
 }
 
 bal_status bali_read_whole(const char *path, size_t limit, char **bytes, size_t *length, bal_error *err) {
+    return bali_read_while(path, limit, NULL, bytes, length, err);
+}
+
+bal_status bali_read_while(const char *path, size_t limit, bali_goes_on goes_on, char **bytes, size_t *length, bal_error *err) {
     *bytes = NULL;
     *length = 0;
     if (limit == SIZE_MAX) limit--;
@@ -200,7 +204,7 @@ bal_status bali_read_whole(const char *path, size_t limit, char **bytes, size_t 
     size_t n = 0;
     bal_status status = bali_input_open(path, &input, err);
     if (status == BAL_OK && input->regular && (uintmax_t)input->opened.st_size > limit) status = too_large(input, limit, err);
-    if (status == BAL_OK) status = read_all(input, limit, &all, &n, err);
+    if (status == BAL_OK) status = read_all(input, limit, goes_on, &all, &n, err);
     if (status == BAL_OK) {
         all[n] = '\0';
         *bytes = all;

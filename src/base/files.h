@@ -52,6 +52,14 @@ void bali_input_close(bali_input *input);
  */
 BAL_MUST_CHECK bal_status bali_read_whole(const char *path, size_t limit, char **bytes, size_t *length, bal_error *err);
 
+/** Whether what was read so far is worth reading on. */
+typedef bool (*bali_goes_on)(const char *bytes, size_t length);
+
+/** The same, asking before more is read than a pipe gives at first; where the answer is no, *bytes is what was read so far. goes_on
+ *  may be NULL. */
+BAL_MUST_CHECK bal_status bali_read_while(const char *path, size_t limit, bali_goes_on goes_on, char **bytes, size_t *length,
+                                          bal_error *err);
+
 /** The part behind the last slash; "-" gives "standard input". Borrowed from path or static. */
 const char *bali_base_name(const char *path);
 

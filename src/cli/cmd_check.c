@@ -60,11 +60,33 @@ static bal_status deliver(check_work *w, bali_text *page, bal_error *err) {
     return status == BAL_OK ? bali_results_commit(&w->results, err) : status;
 }
 
+/* Passes on what a fit would refuse, and not again what was told already. */
+static void tell_problems(void *console, bal_severity severity, const bal_error *notice) {
+    if (severity == BAL_PROBLEM) bali_console_tell(console, severity, notice);
+}
+
+/* Reads the tables as a fit would, up to the first that it would refuse. */
+static bal_status refuse_as_fit(const bali_call *call, check_work *w, bal_error *err) {
+    bal_status status = BAL_OK;
+    w->inputs.notices.tell = tell_problems;
+    for (size_t i = 1; i < call->n_arguments && status == BAL_OK; i++) {
+        bal_source *table = NULL;
+        bal_block block = {.n_records = 1};
+        if (strcmp(call->arguments[i], "-") == 0) continue; /* it was read, and is gone */
+        status = bali_inputs_open_table(call, &w->inputs, call->arguments[i], BAL_MISSING_STOP, &table, err);
+        while (status == BAL_OK && block.n_records > 0) status = bal_source_next(table, &block, err);
+        bal_source_free(table);
+    }
+    return status;
+}
+
 /* Under --missing stop, incomplete records make the check fail as they would make a fit fail. */
-static bal_status judge_missing(const bali_call *call, const check_work *w, bal_error *err) {
+static bal_status judge_missing(const bali_call *call, check_work *w, bal_error *err) {
     uint64_t dropped = w->inputs.facts.summary.dropped;
     if (dropped == 0 || bali_call_missing(call) != BAL_MISSING_STOP) return BAL_OK;
-    bal_status status = bal_error_set(err, BAL_ERR_DATA, "missing-cells",
+    bal_status status = refuse_as_fit(call, w, err);
+    if (status != BAL_OK) return status;
+    status = bal_error_set(err, BAL_ERR_DATA, "missing-cells",
                                       "%llu records have a missing cell, so a fit will refuse this table; fill them in, or give --missing drop",
                                       (unsigned long long)dropped);
     bal_error_place(err, call->arguments[1], 0, 0);

@@ -38,6 +38,14 @@ bal_status bali_xmlbif_document(bali_xml *xml, const bal_network_options *option
     return status;
 }
 
+/* XML begins with < behind blanks and a byte order mark. Whatever else begins otherwise is refused by its first bytes, so an endless
+ * file is not worth more of them. */
+static bool may_be_xml(const char *bytes, size_t length) {
+    size_t i = length >= 3 && memcmp(bytes, "\xEF\xBB\xBF", 3) == 0 ? 3 : 0;
+    while (i < length && memchr(" \t\r\n", bytes[i], 4)) i++;
+    return i < length && bytes[i] == '<';
+}
+
 bal_status bal_document_read(const char *path, const bal_network_options *options, bal_document **out,
                              bal_file_facts *facts, bal_error *err) {
     *out = NULL;
@@ -47,7 +55,7 @@ bal_status bal_document_read(const char *path, const bal_network_options *option
     char *bytes = NULL;
     size_t length = 0;
     bali_xml *xml = NULL;
-    bal_status status = bali_read_whole(path, largest_file, &bytes, &length, err);
+    bal_status status = bali_read_while(path, largest_file, may_be_xml, &bytes, &length, err);
     if (status == BAL_OK && facts) status = take_facts(path, bytes, length, &found, err);
     if (status == BAL_OK) {
         status = bali_xml_create_take(strcmp(path, "-") == 0 ? bali_base_name(path) : path, bytes, length, &xml, err);

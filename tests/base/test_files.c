@@ -466,6 +466,25 @@ START_TEST(one_file_by_two_names_is_known) {
 }
 END_TEST
 
+static bool never(const char *bytes, size_t length) {
+    return length == 0 || bytes[0] != '\0';
+}
+
+/* An endless file is not read for ever where its first bytes tell enough. */
+START_TEST(reading_goes_on_while_it_is_worth_it) {
+    char *bytes = NULL;
+    size_t length = 0;
+    bal_error err = {0};
+    ck_assert_int_eq(bali_read_while("/dev/zero", (size_t)1 << 30, never, &bytes, &length, &err), BAL_OK);
+    ck_assert_uint_gt(length, 0);
+    ck_assert_uint_lt(length, 1 << 20);
+    bali_free(bytes);
+    ck_assert_int_eq(bali_read_while("/dev/zero", 1 << 20, NULL, &bytes, &length, &err), BAL_ERR_DATA);
+    ck_assert_ptr_null(bytes);
+    ck_assert_str_eq(err.code, "file-too-large");
+}
+END_TEST
+
 static Suite *suite(void) {
     Suite *suite = suite_create("files");
     TCase *tests = tcase_create("files");
@@ -487,6 +506,7 @@ static Suite *suite(void) {
     tcase_add_test(tests, no_memory_is_told);
     tcase_add_loop_test(tests, a_base_name_is_never_a_path, 0, (int)(sizeof bases / sizeof bases[0]));
     tcase_add_test(tests, one_file_by_two_names_is_known);
+    tcase_add_test(tests, reading_goes_on_while_it_is_worth_it);
     suite_add_tcase(suite, tests);
     return suite;
 }
