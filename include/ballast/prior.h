@@ -43,8 +43,8 @@ typedef struct bal_prior bal_prior;
 /**
  * Makes a prior for a network.
  *
- * Fails:  ARGUMENT for a strength, row ESS or floor out of range, for EXPERT without tables or without a
- *         row ESS (err->variable says where), and for CARRIED without pseudo-counts; DATA when the expert's document
+ * Fails:  ARGUMENT for a strength, row ESS or floor out of range, for EXPERT without a
+ *         row ESS (err->variable says where), and for CARRIED without pseudo-counts; DATA when the expert's document lacks tables or
  *         holds pseudo-counts, so that its tables are fitted ones, when a document is over another network, and when
  *         the carried pseudo-counts of a row are all 0 (err->variable says where); MEMORY.
  */

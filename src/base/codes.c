@@ -90,7 +90,7 @@ static const bal_code codes[] = {
      "Save the records to a file and give its name."},
     {"cannot-write", "An output could not be written: the disk is full, the folder or the file may not be written, or the "
                      "reader of a pipe went away. A file that stood there before is as it was.",
-     "fitted.xml: cannot be written: No space left on device; make room, or choose another place for it",
+     "fitted.xml: cannot be written: No space left on device; see to the folder, its permissions and its room, or choose another place",
      "Make room on the disk, check the permission to write, or choose another place with -o."},
     {"cell-too-long", "One cell of a table is longer than 1 MiB.",
      "cases.csv:17:40: the cell that begins here is longer than 1 MiB; shorten it",
@@ -313,6 +313,11 @@ static const bal_code codes[] = {
     {"output-is-input", "An output names a file that is also read.",
      "clinic.xml is read and would be written; write to another file and move it over",
      "Write to a new file, then move it over the old one with mv."},
+    {"part-twice", "Counts equal to those of the new data went into the carried fit before. The same records may be "
+     "counted twice.",
+     "fitted.xml: the same counts went into this file before: the same records may count twice now; check "
+     "that they are other cases",
+     "Make sure that the batch is new. If it went in before, keep the file as it is."},
     {"ragged-record", "A record of a table has more or fewer cells than the header.",
      "cases.csv:17: found 3 cells, expected 4 as in the header on line 1; is a delimiter missing, or a quote "
      "not closed?",
@@ -327,6 +332,10 @@ static const bal_code codes[] = {
      "row smoker=yes of cough sums to 0.83, not to 1; correct its numbers",
      "Correct the numbers. If the message says that the rows sum to 1 in the other order, give --table-order "
      "for-slowest."},
+    {"same-content", "Two tables among the data hold the same bytes, so their records count twice.",
+     "again.csv: holds the same bytes as cases.csv, so its records count twice, and each may be held out "
+     "while its copy is not; leave one of them out",
+     "Leave one of the two out."},
     {"second-network", "A network file has two NETWORK elements.",
      "a second NETWORK; the first is on line 3: keep one of them",
      "Put each network into a file of its own."},
@@ -406,6 +415,9 @@ static const bal_code codes[] = {
     {"unknown-parent", "A parent does not exist.",
      "parent 12 of Fever does not exist; there are 10 variables",
      "Name a variable of the network."},
+    {"unknown-property", "A property begins with ballast. and is none that Ballast knows. It is kept and has no effect.",
+     "net.xml:7: ballast.cut is no property of Ballast's and has no effect; did you mean ballast.cuts?",
+     "Correct its name, or give a property of your own another beginning."},
     {"unknown-variable", "A definition is of a variable that the network file does not declare.",
      "FOR \"cuogh\" is not a variable of this file; did you mean \"cough\"?",
      "Correct the name, or declare the variable."},

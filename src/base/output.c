@@ -286,7 +286,7 @@ static bal_status cannot_write(bali_output *output, int reason, bal_error *err) 
     output->failed = true;
     if (reason == ENOMEM) return bali_out_of_memory(err);
     const char *name = strcmp(output->name, "-") == 0 ? "standard output" : output->name;
-    return bali_system_error(err, "cannot-write", name, reason, "cannot be written", "make room, or choose another place for it");
+    return bali_system_error(err, "cannot-write", name, reason, "cannot be written", "see to the folder, its permissions and its room, or choose another place");
 }
 
 bal_status bali_output_open(const char *path, bali_output **out, bal_error *err) {

@@ -1,6 +1,7 @@
 #include "cli/fitting.h"
 
 #include "cli/prior_options.h"
+#include "cli/twice.h"
 
 #include <math.h>
 #include <string.h>
@@ -77,6 +78,7 @@ static bal_status gather_counts(const bali_call *call, bali_fitting *f, double *
     bal_cells *earlier = NULL;
     bool has_new = call->n_arguments > 1;
     bal_status status = carry(old, weight, NULL, &earlier, err);
+    if (status == BAL_OK && has_new) status = bali_warn_of_known_part(&f->inputs, err);
     if (status == BAL_OK && has_new) status = carry(old, weight, f->inputs.counts, &f->counts, err);
     if (status == BAL_OK && !has_new) status = bal_cells_copy(earlier, &f->counts, err);
     if (status == BAL_OK) status = score_earlier(f, earlier, earlier_score, err);
@@ -113,7 +115,8 @@ static bal_status hold_out_table(const bali_call *call, bali_fitting *f, bal_err
     while (status == BAL_OK && (status = bal_source_next(kept, &block, err)) == BAL_OK && block.n_records > 0) {} /* its facts and weights */
     if (status == BAL_OK) {
         bal_table_facts(table, &facts);
-        status = bali_inputs_add_file(&f->inputs, &facts, err);
+        status = bali_refuse_equal_test(&f->inputs, &facts, err);
+        if (status == BAL_OK) status = bali_inputs_add_file(&f->inputs, &facts, err);
     }
     bal_source_summary summary = {0};
     if (status == BAL_OK) bal_source_summary_get(kept, &summary);

@@ -1,4 +1,5 @@
 #include "cli/inputs.h"
+#include "cli/twice.h"
 
 #include "base/files.h"
 #include "base/memory.h"
@@ -60,16 +61,6 @@ static bal_status check_standard_input(const bali_call *call, bal_error *err) {
     return bal_error_set(err, BAL_ERR_ARGUMENT, "input-twice", "standard input can be only one of the inputs; give the others as files");
 }
 
-/* A fit has seen its own records, however the file is called: what it says of them is no prediction. */
-static bal_status check_test_table(const bali_call *call, bal_error *err) {
-    const option_value *test = &call->values[OPTION_TEST];
-    for (size_t i = 1; i < call->n_arguments && test->given; i++)
-        if (bali_same_file(test->text, call->arguments[i]))
-            return bal_error_set(err, BAL_ERR_ARGUMENT, "input-twice", "%s would be fitted to and held out as well; give --test a table of other records",
-                                 test->text);
-    return BAL_OK;
-}
-
 static bal_status mark_unrecorded(const bali_call *call, bali_inputs *inputs, bal_error *err) {
     const option_value *option = &call->values[OPTION_UNRECORDED];
     const bal_domain *domain = bal_network_domain(bal_document_network(inputs->document));
@@ -103,7 +94,7 @@ bal_status bali_inputs_read_network(const bali_call *call, bali_console *console
     char delimiter;
     bal_status status = read_delimiter(&call->values[OPTION_DELIMITER], &delimiter, err); /* before any file is opened */
     if (status == BAL_OK) status = check_standard_input(call, err);
-    if (status == BAL_OK) status = check_test_table(call, err);
+    if (status == BAL_OK) status = bali_refuse_same_files(call, err);
     if (status != BAL_OK) return status;
     bal_network_options options = network_options(call, inputs);
     bal_file_facts facts;
@@ -245,7 +236,9 @@ static bal_status read_tables(const bali_call *call, const bali_data_options *op
     status = bal_source_keep_take(tables, options->keep_records ? bali_call_memory(call) : 0, &inputs->source, err);
     if (status == BAL_OK) status = bal_tally_threads(bal_document_network(inputs->document), inputs->source, bali_call_threads(call),
                                                        &inputs->fewer_threads, &inputs->counts, err);
-    return status == BAL_OK ? note_tables(inputs, options->missing == BAL_MISSING_FAMILY, err) : status;
+    if (status == BAL_OK) status = note_tables(inputs, options->missing == BAL_MISSING_FAMILY, err);
+    if (status == BAL_OK) bali_warn_of_equal_tables(inputs);
+    return status;
 }
 
 static void warn_of_counts(const bali_inputs *inputs, const char *name) {

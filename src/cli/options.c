@@ -96,7 +96,7 @@ static void put_words(bali_text *text, const char *const *words) {
     }
 }
 
-/* "a number above 0 up to, but not, 1", "a whole number from 0 up to 65535". */
+/* "a number above 0 and below 1", "a whole number from 0 up to 65535". */
 static void put_range(bali_text *text, const option_spec *spec) {
     if (spec->kind == KIND_WORD) {
         put_words(text, spec->words);
@@ -105,7 +105,7 @@ static void put_range(bali_text *text, const option_spec *spec) {
     bali_text_puts(text, spec->kind == KIND_WHOLE ? "a whole number" : spec->kind == KIND_SIZE ? "bytes, such as 512M or 4G," : "a number");
     bali_text_puts(text, spec->above_least ? " above " : " from ");
     bali_text_put_number(text, spec->least);
-    bali_text_puts(text, spec->below_most ? " up to, but not, " : " up to ");
+    bali_text_puts(text, spec->below_most ? spec->above_least ? " and below " : " to below " : " up to ");
     if (spec->most >= 0x1p64) {
         bali_text_puts(text, "18446744073709551615"); /* 2^64 - 1, which a double does not hold */
     } else if (spec->kind == KIND_NUMBER || spec->kind == KIND_NUMBER_OR_WORD) {

@@ -13,7 +13,7 @@ bal_status bali_set_property(bal_document *document, const char *name, bali_text
     return status;
 }
 
-static bal_status put_hash(const bal_cells *counts, bali_text *value, bal_error *err) {
+bal_status bali_put_counts_hash(const bal_cells *counts, bali_text *value, bal_error *err) {
     const bal_network *network = bal_cells_network(counts);
     bali_hash *hash = bali_hash_create();
     if (!hash) return bali_out_of_memory(err);
@@ -52,7 +52,7 @@ static bal_status put_parts(const bal_document *document, const bali_inputs *inp
     if (own && old) return BAL_OK;
     if (old) bali_text_putc(value, ' ');
     if (given) bali_text_puts(value, given);
-    return given ? BAL_OK : put_hash(inputs->counts, value, err);
+    return given ? BAL_OK : bali_put_counts_hash(inputs->counts, value, err);
 }
 
 /* "clinic.xml" sha256=..., "cases.csv" sha256=... */

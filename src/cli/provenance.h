@@ -16,6 +16,9 @@
  */
 BAL_MUST_CHECK bal_status bali_set_provenance(bal_document *document, const bali_inputs *inputs, bool carried, bal_error *err);
 
+/** Adds the SHA-256 by which a tally is known as a part. Fails: MEMORY. */
+BAL_MUST_CHECK bal_status bali_put_counts_hash(const bal_cells *counts, bali_text *value, bal_error *err);
+
 /** Sets a property of the network to a text, which is emptied. Fails: MEMORY. */
 BAL_MUST_CHECK bal_status bali_set_property(bal_document *document, const char *name, bali_text *value, bal_error *err);
 

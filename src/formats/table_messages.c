@@ -24,7 +24,7 @@ static bool equal_lower(const char *text, size_t length, const char *word) {
 static bool is_usual_missing(const char *text, size_t length) {
     static const char *const usual[] = {
         "n/a", "na", "nan", "null", "none", "nil", "missing", "n.a.", "#n/a", "<na>", "(null)", "#value!", "not known",
-        "unk", "?",  "??",  ".",    "..",   "-",   "--",      "---",  "*",    "-1",   "-9",     "-99",     "-999",
+        "unk", "unknown", "not done", "?",  "??",  ".",    "..",   "-",   "--",      "---",  "*",    "-1",   "-9",     "-99",     "-999",
         "-9999", "999", "9999"};
     for (size_t i = 0; i < sizeof usual / sizeof usual[0]; i++)
         if (equal_lower(text, length, usual[i])) return true;
@@ -96,6 +96,8 @@ static size_t made_into_date(const bali_bad_label *label) {
     return BALI_NO_NAME;
 }
 
+enum { LONGEST_CODE = 3 };
+
 static void say_hint(const bali_bad_label *label, bali_phrase *phrase) {
     bali_difference how;
     const char *const *labels = bali_domain_labels(label->domain, label->variable), *words = NULL;
@@ -114,9 +116,12 @@ static void say_hint(const bali_bad_label *label, bali_phrase *phrase) {
         if (words) bali_phrase_add(phrase, " differs %s", words);
         else bali_phrase_add(phrase, "?");
     }
-    if (!is_usual_missing(label->text, label->length)) return;
-    bali_phrase_add(phrase, "; if it means a missing cell, give --missing-label ");
-    bali_phrase_quote(phrase, label->text, label->length);
+    if (is_usual_missing(label->text, label->length)) {
+        bali_phrase_add(phrase, "; if it means a missing cell, give --missing-label ");
+        bali_phrase_quote(phrase, label->text, label->length);
+    } else if (outcome == BALI_NO_NAME && label->length <= LONGEST_CODE) {
+        bali_phrase_add(phrase, "; if it is a code, --codebook says of what");
+    }
 }
 
 void bali_say_bad_label(const bali_bad_label *label, bali_phrase *phrase) {

@@ -3,6 +3,7 @@
 #include "formats/xmlbif.h"
 
 #include "base/memory.h"
+#include "base/names.h"
 #include "base/text.h"
 
 #include <string.h>
@@ -337,6 +338,20 @@ static bal_status check_plain(const reader *r, bal_error *err) {
     return BAL_OK;
 }
 
+/* A name that begins like Ballast's own and is none of them would have no effect in silence. */
+static void remark_unknown(reader *r, const char *text, size_t at) {
+    static const char *const known[] = {"ballast.counts", "ballast.pseudo-counts", "ballast.row-ess", "ballast.cuts", "ballast.column",
+                                        "ballast.records", "ballast.ess", "ballast.prior", "ballast.made-by", "ballast.inputs", "ballast.parts"};
+    enum { N_KNOWN = sizeof known / sizeof known[0] };
+    size_t length = strcspn(text, " \t\r\n=");
+    if (strncmp(text, "ballast.", 8) != 0 || length > BAL_MAX_NAME_BYTES) return;
+    for (size_t i = 0; i < N_KNOWN; i++)
+        if (strlen(known[i]) == length && memcmp(known[i], text, length) == 0) return;
+    size_t near = bali_nearest(text, length, known, N_KNOWN);
+    bali_remark(r->remarks, at, "unknown-property", subject(r), "%.*s is no property of Ballast's and has no effect%s%s%s", (int)length, text,
+                near == BALI_NO_NAME ? "" : "; did you mean ", near == BALI_NO_NAME ? "" : known[near], near == BALI_NO_NAME ? "" : "?");
+}
+
 static bal_status take_property(reader *r, bal_error *err) {
     if (r->property == NUMBERS) return bali_number_finish(&r->numbers, err);
     bali_draft *draft = r->draft;
@@ -355,6 +370,8 @@ static bal_status take_property(reader *r, bal_error *err) {
     p->length = r->text.length;
     p->text = bali_duplicate(bali_text_string(&r->text), p->length);
     if (!p->text) return bali_out_of_memory(err);
+    size_t length;
+    remark_unknown(r, trimmed(&r->text, &length), p->at);
     draft->n_properties++;
     return BAL_OK;
 }

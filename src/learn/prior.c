@@ -65,7 +65,7 @@ static bal_status weigh_expert(bal_prior *prior, const bal_prior_options *option
     if (status != BAL_OK) return status;
     const bal_domain *domain = bal_network_domain(prior->network);
     if (!bal_document_cells(options->expert, BAL_CARRIED_TABLES))
-        return bal_error_set(err, BAL_ERR_ARGUMENT, "no-tables",
+        return bal_error_set(err, BAL_ERR_DATA, "no-tables",
                              "the expert prior needs a table for every variable; add the missing TABLE elements");
     status = bal_cells_create(prior->network, &prior->units, err);
     for (size_t v = 0; v < bal_domain_variables(domain) && status == BAL_OK; v++) {

@@ -40,7 +40,7 @@ static void put_data(bali_text *text, const bali_check_facts *facts, bali_text *
     if (data->fractional) bali_text_printf(words, " of weight %.6g", data->weight);
     if (data->from_table) put_completeness(words, &data->summary);
     size_t parameters = bal_network_free_parameters(bal_document_network(facts->document));
-    if (parameters) bali_text_printf(words, "; %.2g a free parameter", data->records / (double)parameters);
+    if (parameters) bali_text_printf(words, "; %.2g records a free parameter", data->records / (double)parameters);
     for (size_t v = 0; data->summary.missing && v < bal_domain_variables(domain); v++) {
         if (data->summary.missing[v] == 0) continue;
         bali_text_puts(words, "\nmissing in ");
@@ -76,8 +76,8 @@ static void put_support(bali_text *text, const bali_check_facts *facts, bali_tex
     const bal_support *support = facts->support;
     bali_text_puts(text, "\nIs this table enough?\n  ");
     if (!isnan(support->row_share)) {
-        bali_text_printf(words, "of 100 new cases, about %.0f will meet a row that no record supports, and about %.0f a cell (the share of records "
-                                "alone in a row, or cell, they need)",
+        bali_text_printf(words, "of 100 new cases, about %.0f will need a row that no record supports, and about %.0f a cell that none does (so many "
+                                "of these records are alone in theirs)",
                          100 * support->row_share, 100 * support->cell_share);
     } else if (!facts->data->from_table) {
         bali_text_puts(words, "that takes the records themselves; --json tells what the counts say for each family");
@@ -93,11 +93,13 @@ static void put_support(bali_text *text, const bali_check_facts *facts, bali_tex
 }
 
 static void put_next(bali_text *text, const bali_check_facts *facts, bali_text *words) {
-    bali_text_puts(words, facts->counts ? "ballast fit " : "ballast check ");
-    bali_put_visible(words, facts->data->inputs[0].name);
-    bali_text_putc(words, ' ');
-    if (facts->counts && facts->data->n_data > 0) bali_put_visible(words, facts->data->inputs[facts->data->first_data].name);
-    if (!facts->counts) bali_text_puts(words, "TABLE.csv says whether a table is enough");
+    if (facts->counts) {
+        bali_text_puts(words, "ballast fit, with the same files and options");
+    } else {
+        bali_text_puts(words, "ballast check ");
+        bali_put_visible(words, facts->data->inputs[0].name);
+        bali_text_puts(words, " TABLE.csv says whether a table is enough");
+    }
     bali_text_putc(text, '\n');
     bali_put_item(text, "next", words);
 }

@@ -108,9 +108,11 @@ static void put_scores(bali_text *text, const bali_fit_facts *facts, bali_text *
         bali_text_printf(words, "; leave-one-out %.4f a record", fit->scores.leave_one_out / records);
         if (fit->strength.chosen) bali_text_puts(words, " (slightly optimistic: the strength was chosen on these records)");
         if (facts->n_others > 0) bali_text_puts(words, "\nleave-one-out under other priors: ");
-        for (size_t i = 0; i < facts->n_others; i++)
+        for (size_t i = 0; i < facts->n_others; i++) {
             bali_text_printf(words, "%s%s %.4f", i ? ", " : "", bal_prior_kind_name(facts->others[i].kind),
                              facts->others[i].leave_one_out / records);
+            if (facts->others[i].kind == BAL_PRIOR_BDEU) bali_text_printf(words, " (ESS %g, chosen on these records)", facts->others[i].strength);
+        }
     }
     bali_put_item(text, "scores", words);
 }
@@ -142,9 +144,9 @@ static void put_what_came_out(bali_text *text, const bali_fit_facts *facts, bali
     if (!facts->written) bali_text_puts(words, "-o FITTED.xml writes the tables");
     if (!facts->json) bali_text_puts(words, words->length ? "; --json FILE every number and interval" : "--json FILE writes every number and interval");
     if (facts->written && facts->json) {
-        bali_text_puts(words, "ballast check ");
-        bali_put_visible(words, facts->data->inputs[0].name);
-        bali_text_puts(words, " TABLE says whether a table is enough");
+        bali_text_puts(words, "ballast fit ");
+        bali_put_visible(words, facts->written);
+        bali_text_puts(words, " NEXT.csv --prior carried adds the next batch of cases");
     }
     bali_put_item(text, "next", words);
 }

@@ -129,7 +129,8 @@ void bali_put_heldout(bali_text *text, const bali_fit_facts *facts) {
         put_count(text, "    the rest", others);
         bali_text_printf(text, "%10.4f%10s\n", h->bayes_on_others, h->impossible > 0 ? "-inf" : "undefined");
     }
-    put_count(text, "  the prior alone, all records", h->records);
+    bool carried = bal_prior_kind_of(facts->prior) == BAL_PRIOR_CARRIED; /* then earlier records are no part of it */
+    put_count(text, carried ? "  the first prior alone, all" : "  the prior alone, all records", h->records);
     bali_text_printf(text, "%10.4f\n", h->prior_log_likelihood / h->records);
     put_count(text, "  quadratic score (low is good)", h->records);
     put_difference(text, &h->quadratic);

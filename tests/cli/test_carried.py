@@ -183,10 +183,11 @@ class Carried(ProgramTest):
 
 class Tallies(ProgramTest):
     def test_a_tally_fits_as_its_table_does(self):
-        self.ballast("tally", "clinic.xml", "cases.csv", "cases.csv", "-o", "tally.xml", "--json", "tally.json", "--quiet")
+        self.write("again.csv", self.read("cases.csv"))
+        self.ballast("tally", "clinic.xml", "cases.csv", "again.csv", "-o", "tally.xml", "--json", "tally.json", "--quiet")
         words = ["--quiet", "--json", "-", "--folds", "0", "--ess", "3"]
         fits = [read_json(self.ballast("fit", *inputs, *words, "-o", "%d.xml" % i).out)
-                for i, inputs in enumerate([["clinic.xml", "cases.csv", "cases.csv"], ["tally.xml"], ["clinic.xml", "tally.xml"]])]
+                for i, inputs in enumerate([["clinic.xml", "cases.csv", "again.csv"], ["tally.xml"], ["clinic.xml", "tally.xml"]])]
         for key in ("log_marginal_likelihood", "loo", "other_priors", "families", "network"):
             self.assertEqual(fits[1][key], fits[0][key], key)
             self.assertEqual(fits[2][key], fits[0][key], key)
@@ -196,7 +197,7 @@ class Tallies(ProgramTest):
         tally = read_json(self.read("tally.json"))
         self.assertEqual(tally["ballast"]["command"], "tally")
         self.assertEqual((tally["data"]["records"], tally["data"]["weight"]), (500, 500))
-        self.assertEqual([i["file"] for i in tally["inputs"]], ["clinic.xml", "cases.csv", "cases.csv"])
+        self.assertEqual([i["file"] for i in tally["inputs"]], ["clinic.xml", "cases.csv", "again.csv"])
         self.assertEqual([[f["variable"], f["parents"], f["counts"]] for f in tally["families"]],
                          [[f["variable"], f["parents"], [n for row in f["rows"] for n in row["counts"]]] for f in fits[0]["families"]])
 

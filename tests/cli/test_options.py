@@ -44,7 +44,7 @@ class Options(ProgramTest):
         """Each numeric option with the range that its refusal names: lowest, highest, and whether these belong to it."""
         for command, option in self.each(lambda option: option.is_number):
             told = self.refused(command, option, "--" + option.name, "10x").err.decode()
-            found = re.search(r"; give (?:a whole number|a number|bytes, such as 512M or 4G,) (from|above) (\S+) (up to, but not,|up to) ([^\s,]+)", told)
+            found = re.search(r"; give (?:a whole number|a number|bytes, such as 512M or 4G,) (from|above) (\S+) (and below|to below|up to) ([^\s,]+)", told)
             self.assertTrue(found, told)
             yield command, option, found.group(2), found.group(1) == "from", found.group(4), found.group(3) == "up to"
 

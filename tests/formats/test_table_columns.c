@@ -109,7 +109,7 @@ static const table_case cases[] = {
     {CODES, "smoker,temp\nJ,36\n1,36\n,36\nno,36\nyes,<HI>\n", "0: 1 0\n1: 1 0\n2: 0 0\n3: 0 0\n4: 1 2\n= 5 -0 ~0 places 5 weight 5\n"},
     {CODES | FAMILY, "smoker,temp\n\"\",36\nNA,36\n", "0: 0 0\n1: - 0\n= 2 -0 ~1 places 2 weight 2 missing 1 0\n"},
     {CODES, "smoker,temp\nj,36\n",
-     "t.csv:2:1: \"j\" is not an outcome of smoker (no, yes) [unknown-label]\n"},
+     "t.csv:2:1: \"j\" is not an outcome of smoker (no, yes); if it is a code, --codebook says of what [unknown-label]\n"},
     {CODES | ONLY_SMOKER, "smoker\nJ\n\"\"\n\nyes\n", "0: 1 ~\n1: 0 ~\n2: 0 ~\n3: 1 ~\n= 4 -0 ~0 places 4 weight 4\n"},
     {CODES | ONLY_SMOKER, "smoker\nJ\n\n",
      "t.csv:3:1: blank lines end the table, and an empty cell is an outcome here; remove them, or write \"\" for records [blank-line]\n"},

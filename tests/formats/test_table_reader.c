@@ -86,10 +86,10 @@ static const table_case cases[] = {
      "clinic.csv:2:1: \"n\\x0Ao\" is not an outcome of smoker (no, yes); \"no\" differs only in blanks [unknown-label]\n"
      "clinic.csv:4:1: \"noo\" is not an outcome of smoker (no, yes) in record 2; did you mean \"no\"? [unknown-label]\n"},
     {HEADER "x,9,y\nno,1,home\nno,8,home\n", STOP,
-     "clinic.csv:2:1: \"x\" is not an outcome of smoker (no, yes) [unknown-label]\n"
-     "clinic.csv:2:3: \"9\" is not an outcome of stage (1, 2, NA, 1-2, stage two) [unknown-label]\n"
-     "clinic.csv:2:5: \"y\" is not an outcome of place (caf\xC3\xA9, home, ward with a long name) [unknown-label]\n"
-     "clinic.csv:4:4: \"8\" is not an outcome of stage (1, 2, NA, 1-2, stage two) [unknown-label]\n"},
+     "clinic.csv:2:1: \"x\" is not an outcome of smoker (no, yes); if it is a code, --codebook says of what [unknown-label]\n"
+     "clinic.csv:2:3: \"9\" is not an outcome of stage (1, 2, NA, 1-2, stage two); if it is a code, --codebook says of what [unknown-label]\n"
+     "clinic.csv:2:5: \"y\" is not an outcome of place (caf\xC3\xA9, home, ward with a long name); if it is a code, --codebook says of what [unknown-label]\n"
+     "clinic.csv:4:4: \"8\" is not an outcome of stage (1, 2, NA, 1-2, stage two); if it is a code, --codebook says of what [unknown-label]\n"},
 
     /* Missing cells. */
     {HEADER "no,1,\nNA,2,home\n\"\",1,home\nyes,1,home\n", STOP,

@@ -117,7 +117,10 @@ void expect_round_trip(const bal_document *document) {
     bal_error err = {0};
     bal_status status = read_bytes(first, first_length, bal_network_options_defaults(), &s, &again, &err);
     ck_assert_msg(status == BAL_OK, "%s", err.message);
-    ck_assert_uint_eq(s.n, 0);
+    /* A foreign name that begins like Ballast's own is remarked upon each time. */
+    size_t foreign = 0;
+    for (const char *at = bali_text_string(&s.text); (at = strstr(at, "unknown-property ")); at++) foreign++;
+    ck_assert_msg(s.n == foreign, "%s", bali_text_string(&s.text));
     expect_equal_documents(document, again);
     print_document(again, &second, &second_length);
     ck_assert_uint_eq(first_length, second_length);
