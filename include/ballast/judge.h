@@ -25,6 +25,7 @@ typedef struct bal_heldout_options {
     size_t repeats;   /* FOLDS and HOLDOUT: >= 1 */
     uint64_t seed;
     unsigned threads; /* >= 1; changes no number */
+    size_t count_bytes; /* refuse to take more memory for the parts' counts and the records' sums; 0 = no limit */
     size_t prediction_bytes; /* memory for the folds' predictions, 256 MiB; changes no number */
 } bal_heldout_options;
 BAL_API bal_heldout_options bal_heldout_options_defaults(void);
@@ -91,7 +92,7 @@ BAL_API uint64_t bal_holdout_key(uint64_t seed, uint64_t repeat);
  * source  the records that are held out: those counted, or the test table; rewound and gone over. A record of whole weight w is
  *         w records. A variable without a column is left out with every family that touches it.
  *
- * Fails:  ARGUMENT for options out of range, or GROUPS without a fold column; DATA beyond BAL_HELDOUT_MOST_RECORDS, where a weight
+ * Fails:  DATA "held-out-memory" beyond count_bytes; ARGUMENT for options out of range, or GROUPS without a fold column; DATA beyond BAL_HELDOUT_MOST_RECORDS, where a weight
  *         is not whole, and "changed-while-read" when records are held out that counts does not hold; whatever the source meets; MEMORY; NUMERIC.
  * Cost:   two passes over the records a repeat, O(records x (variables + arcs)), and parts times the cost of settling the
  *         prior; 8 bytes a cell and part for the parts' counts, and at most prediction_bytes (or one part's 48 bytes a

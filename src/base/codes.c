@@ -106,6 +106,11 @@ static const bal_code codes[] = {
      "writing direction.",
      "an outcome \"a\\x1B\" holds the control character U+001B; remove it",
      "Remove the character from the file."},
+    {"count-too-large", "The counts of a family sum to more than 2^53. Beyond that a double does not hold every whole number,"
+     " and counts would be rounded in silence.",
+     "the counts of Fever sum to 2^53 or more, where they are no longer exact; divide all counts by one"
+     " number",
+     "Correct the counts in the file; if they are right, divide all of them by one number."},
     {"counts-ignored", "The network file carries counts of earlier records, and a table was given too; only the table is "
      "used.",
      "fitted.xml: the network's own counts are not used, since a table is given",
@@ -163,6 +168,11 @@ static const bal_code codes[] = {
      "the document type names another file, which is not opened; nothing it declares is applied",
      "Nothing, when the other file only says how such files look. Otherwise write what it declares into the network "
      "file."},
+    {"families-differ", "The families of a file's counts are of different numbers of records.",
+     "the counts of Age are of 250 records and those of Fever of 12, so sums over families mix different "
+     "records; this is as it should be only where cells were missing or a variable was not recorded",
+     "Nothing, when records with missing cells were counted by family, or a variable was not recorded. "
+     "Otherwise the file was changed by hand or mixed up: tally the tables anew."},
     {"fewer-threads", "The system did not start as many threads as were asked for. Fewer did the work; the result is the "
      "same.",
      "the system started fewer threads than were asked for; the result is the same",
@@ -192,6 +202,11 @@ static const bal_code codes[] = {
     {"gzip-ratio", "A compressed table grows to more than 200 times its size, as files do that are made to fill a disk.",
      "cases.csv.gz: the gzip data grow to more than 200 times their size; if that is meant, decompress the file first (gunzip)",
      "Look at the file; if it is the right one, decompress it and give the result."},
+    {"held-out-memory", "The counts of the parts that are held out, or the sums kept for every record over repeats, would "
+     "take more memory than is allowed.",
+     "holding out 8000 parts would take 1221 MiB, more than the 64 MiB allowed; use fewer parts, --folds "
+     "0, or a larger --memory",
+     "Use fewer folds, a fold column with fewer labels, no --repeats, or raise --memory."},
     {"ignored-columns", "Columns of a table are no variables of the network. They are not used.",
      "cases.csv:1: 2 columns are not variables and are ignored: id, date",
      "Nothing, when they are meant to be there; --strict refuses them."},

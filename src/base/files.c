@@ -216,6 +216,16 @@ bal_status bali_read_while(const char *path, size_t limit, bali_goes_on goes_on,
     return status;
 }
 
+static bool same_time(const struct timespec *a, const struct timespec *b) {
+    return a->tv_sec == b->tv_sec && a->tv_nsec == b->tv_nsec;
+}
+
+bool bali_input_same(const bali_input *a, const bali_input *b) {
+    const struct stat *x = &a->opened, *y = &b->opened;
+    return a->regular && b->regular && x->st_dev == y->st_dev && x->st_ino == y->st_ino && x->st_size == y->st_size &&
+           same_time(&x->st_mtim, &y->st_mtim) && same_time(&x->st_ctim, &y->st_ctim);
+}
+
 const char *bali_base_name(const char *path) {
     if (strcmp(path, "-") == 0) return standard_input;
     const char *slash = strrchr(path, '/');

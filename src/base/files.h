@@ -41,6 +41,8 @@ const char *bali_input_name(const bali_input *input);
 const char *bali_input_base_name(const bali_input *input);
 /** The size of a regular file when it was opened; 0 where that is not known, as for a pipe. */
 uint64_t bali_input_size(const bali_input *input);
+/** Whether two inputs read one and the same regular file in one and the same state: device, number, size, times. */
+bool bali_input_same(const bali_input *a, const bali_input *b);
 /** Bytes handed out so far (since the opening or the last rewind). */
 uint64_t bali_input_position(const bali_input *input);
 void bali_input_close(bali_input *input);

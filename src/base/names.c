@@ -5,7 +5,7 @@
 #include <stdint.h>
 #include <string.h>
 
-enum { LONGEST_COMPARED = 255, MOST_COMPARED = 10000 };
+enum { LONGEST_COMPARED = 255, MOST_COMPARED = 10000, MOST_STEPS = 10000000 };
 
 /* FNV-1a, 64 bits (Fowler, Noll & Vo), with a last mix so that the low bits are good. */
 static size_t hash(const char *text, size_t length) {
@@ -109,12 +109,15 @@ static size_t distance(const char *a, size_t length_a, const char *b, size_t len
 
 size_t bali_nearest(const char *text, size_t length, const char *const *names, size_t n_names) {
     if (length == 0 || length > LONGEST_COMPARED) return BALI_NO_NAME;
+    size_t budget = MOST_STEPS; /* of comparing bytes: many long names are not worth the time */
     size_t best = BALI_NO_NAME, best_distance = least(length / 4 > 1 ? length / 4 : 1, 3) + 1;
     for (size_t i = 0; i < least(n_names, MOST_COMPARED); i++) {
         size_t other = strlen(names[i]);
         if (alike(text, length, names[i], other)) return i;
         size_t gap = other > length ? other - length : length - other;
         if (other > LONGEST_COMPARED || gap >= best_distance) continue;
+        if (length * other > budget) break;
+        budget -= length * other;
         size_t edits = distance(text, length, names[i], other);
         /* A one-letter label is not a misspelling of every other one. */
         if (edits < best_distance && edits < length) {

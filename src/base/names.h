@@ -24,7 +24,7 @@ void bali_names_free(bali_names *names);
 /**
  * The name nearest to a text: one that differs only in case or blanks, else within an edit distance of
  * max(1, length/4), at most 3 (Damerau-Levenshtein restricted to adjacent swaps; counted in bytes); else BALI_NO_NAME. Only
- * texts up to 255 bytes and the first 10,000 names are looked at.
+ * texts up to 255 bytes and the first 10,000 names are looked at, fewer where they are long.
  */
 size_t bali_nearest(const char *text, size_t length, const char *const *names, size_t n_names);
 

@@ -6,6 +6,9 @@
 #include <math.h>
 #include <string.h>
 
+/* What holding out may take, however little --memory allows for keeping records. */
+static const size_t least_count_bytes = (size_t)256 << 20;
+
 /* --folds, --fold-column, --holdout and --test are four ways of one thing, and only the random ones can be repeated. */
 static bal_status read_heldout(const bali_call *call, bal_heldout_options *options, bal_error *err) {
     static const option_id ways[] = {OPTION_FOLDS, OPTION_FOLD_COLUMN, OPTION_HOLDOUT, OPTION_TEST};
@@ -26,6 +29,7 @@ static bal_status read_heldout(const bali_call *call, bal_heldout_options *optio
     options->repeats = (size_t)values[OPTION_REPEATS].whole;
     options->seed = values[OPTION_SEED].whole;
     options->threads = bali_call_threads(call);
+    options->count_bytes = bali_call_memory(call) > least_count_bytes ? bali_call_memory(call) : least_count_bytes;
     bool random = (options->method == BAL_HELDOUT_FOLDS && options->folds > 0) || options->method == BAL_HELDOUT_HOLDOUT;
     if (options->repeats > 1 && !random)
         return bal_error_set(err, BAL_ERR_ARGUMENT, "option-mismatch", "--repeats goes with --folds and --holdout, whose parts are random; leave it out");
@@ -169,18 +173,33 @@ static void collect_facts(const bali_call *call, bali_fitting *f, double earlier
     f->facts.maximum_likelihood = call->values[OPTION_ESTIMATE].word == 1;
 }
 
+/* Records of fractional weight cannot be left out one by one, also where their sums happen to be whole. */
+static void leave_fractions_out(bali_fitting *f) {
+    f->inputs.facts.fractional |= isnan(f->fit->scores.leave_one_out);
+    if (f->inputs.facts.fractional) f->fit->scores.leave_one_out = NAN;
+}
+
+static bal_status check_choice(const bali_fitting *f, bal_error *err) {
+    if (!f->inputs.facts.fractional || f->prior_options.choice != BAL_STRENGTH_BY_LEAVE_ONE_OUT) return BAL_OK;
+    return bal_error_set(err, BAL_ERR_DATA, "fractional-weight",
+                         "some weights are not whole, so no strength can be chosen by leaving records out; choose it by auto, or give it");
+}
+
 bal_status bali_fitting_compute(const bali_call *call, bali_fitting *f, bal_error *err) {
     bool held = f->heldout_options.method != BAL_HELDOUT_FOLDS || f->heldout_options.folds > 0;
     bali_data_options options = {.missing = bali_call_missing(call), .keep_records = held};
     double earlier_score = NAN;
     bal_status status = bali_inputs_read_data(call, &options, &f->inputs, err);
+    if (status == BAL_OK) status = check_choice(f, err);
     if (status == BAL_OK) status = bal_prior_check(f->prior, f->inputs.counts, f->inputs.source, err);
     if (status == BAL_OK) status = gather_counts(call, f, &earlier_score, err);
+    if (status == BAL_OK) status = bali_check_counts(&f->inputs, f->counts, err);
     if (status == BAL_OK) status = bal_fit_create(f->prior, f->counts, &f->fit, err);
     if (status != BAL_OK) return status;
-    f->inputs.facts.fractional = isnan(f->fit->scores.leave_one_out);
+    leave_fractions_out(f);
     collect_facts(call, f, earlier_score);
     status = compute_others(f, err);
+    for (size_t i = 0; i < f->facts.n_others && f->inputs.facts.fractional; i++) f->others[i].leave_one_out = NAN;
     if (status == BAL_OK) status = hold_out(call, f, err);
     if (f->inputs.fewer_threads || f->heldout.fewer_threads) bali_warn_of_threads(&f->inputs);
     return status;

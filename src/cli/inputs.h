@@ -48,6 +48,14 @@ BAL_MUST_CHECK bal_status bali_inputs_open_table(const bali_call *call, const ba
 /** How many records a document's counts stand for: what the file says, or what its first family counted; 0 without counts. */
 double bali_document_records(const bal_document *document);
 
+/**
+ * Looks at counts that are to be fitted to: whether their families agree on the number of records goes into the facts, with a warning
+ * where nothing explains it.
+ *
+ * Fails: DATA "count-too-large" where a family has more than 2^53 records, beyond which counts are not exact.
+ */
+BAL_MUST_CHECK bal_status bali_check_counts(bali_inputs *inputs, const bal_cells *counts, bal_error *err);
+
 /** Adds a file to the facts. Fails: MEMORY. */
 BAL_MUST_CHECK bal_status bali_inputs_add_file(bali_inputs *inputs, const bal_file_facts *file, bal_error *err);
 

@@ -361,6 +361,10 @@ bal_status bali_csv_seek(bali_csv *csv, uint64_t from, bal_error *err) {
     return status;
 }
 
+bool bali_csv_same_file(const bali_csv *a, const bali_csv *b) {
+    return bali_input_same(a->buffer.input, b->buffer.input);
+}
+
 uint64_t bali_csv_offset(const bali_csv *csv) {
     return bali_csv_buffer_position(&csv->buffer);
 }

@@ -70,6 +70,8 @@ uint64_t bali_csv_seekable_size(const bali_csv *csv);
  * Fails: IO; DATA "changed-while-read"; MEMORY.
  */
 BAL_MUST_CHECK bal_status bali_csv_seek(bali_csv *csv, uint64_t from, bal_error *err);
+/** Whether two readers stand on one file in one state. */
+bool bali_csv_same_file(const bali_csv *a, const bali_csv *b);
 /** The byte of such a file at which the next cell begins. */
 uint64_t bali_csv_offset(const bali_csv *csv);
 

@@ -1,7 +1,8 @@
 /* A table read in parts of fixed size, whatever the number of threads.
  *
  * A part begins behind the first line end at or after its lower bound and ends where a record begins at or after its upper one.
- * A line end may lie inside quotes; then a part begins where the one before does not end, and the parts do not join. */
+ * A line end may lie inside quotes; then a part begins where the one before does not end, and the parts do not join. Every part opens
+ * the file by its name again: where that is another file by now, the parts do not join either. */
 #include "base/memory.h"
 #include "formats/table_source.h"
 
@@ -47,7 +48,7 @@ static bal_status open_part(bal_source *source, size_t part, bal_source **out, b
     *out = NULL;
     bal_status status = bali_table_open(whole->source.domain, whole->path, &options, &t, err);
     if (status != BAL_OK) return status;
-    note->remarks = 0; /* the header was remarked upon when the whole table was opened */
+    note->remarks = bali_csv_same_file(t->reader.csv, whole->reader.csv) ? 0 : 1; /* those on the header were told before */
     t->is_part = true;
     t->bound = part + 1 < whole->n_notes ? (part + 1) * whole->part_bytes : 0;
     if (part > 0) status = bali_csv_seek(t->reader.csv, part * whole->part_bytes, err);

@@ -68,12 +68,12 @@ static bal_status keep_record(bali_table *t) {
     uint64_t place = t->end;
     t->end += bali_weight_places(reader->weight);
     t->weighs |= reader->weight > 0;
-    t->fractional |= reader->weight != floor(reader->weight);
     if (t->end > BALI_LARGEST_WEIGHT_SUM) return too_heavy(t, &reader->failure);
     if (reader->has_missing && reader->policy == BAL_MISSING_DROP) {
         t->dropped++;
         return BAL_OK;
     }
+    t->fractional |= reader->weight != floor(reader->weight);
     bal_status status = t->groups ? take_number(t, &reader->failure) : BAL_OK;
     if (status != BAL_OK) return status;
     t->incomplete += reader->has_missing;

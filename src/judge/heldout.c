@@ -278,6 +278,17 @@ static void free_parts(heldout *h) {
     bal_source_free(h->source);
 }
 
+/* At most as many parts as records have counts; sums are kept by place. */
+static bal_status check_memory(const heldout *h, const bal_heldout_options *options, uint64_t places, bal_error *err) {
+    double parts = fmin((double)h->partition.n_parts, (double)places), cells = (double)bal_network_cells(h->network);
+    double bytes = options->method == BAL_HELDOUT_TEST ? 0 : parts * cells * sizeof(double);
+    if (options->repeats > 1) bytes += (double)places * sizeof(record_sums);
+    if (options->count_bytes == 0 || bytes <= (double)options->count_bytes) return BAL_OK;
+    return bal_error_set(err, BAL_ERR_DATA, "held-out-memory",
+                         "holding out %.0f parts%s would take %.3g MiB, more than the %.3g MiB allowed; use fewer parts, --folds 0, or a larger --memory",
+                         parts, options->repeats > 1 ? " repeatedly" : "", bytes / 0x1p20, (double)options->count_bytes / 0x1p20);
+}
+
 bal_status bal_heldout_run(const bal_prior *prior, const bal_cells *counts, bal_source *source, const bal_heldout_options *options,
                            bal_heldout *out, bal_error *err) {
     bal_source_summary summary;
@@ -294,6 +305,7 @@ bal_status bal_heldout_run(const bal_prior *prior, const bal_cells *counts, bal_
                  .least_strength = NAN,
                  .largest_strength = NAN};
     bal_status status = bali_partition_create(options, summary.n_groups, &h.partition, err);
+    if (status == BAL_OK) status = check_memory(&h, options, summary.places, err);
     if (status == BAL_OK) status = bali_expanded_open(source, &h.source, err);
     if (status == BAL_OK) status = make_parts(&h, options->method != BAL_HELDOUT_TEST, err);
     if (status == BAL_OK) status = run_repeats(&h, options, err);

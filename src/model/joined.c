@@ -1,5 +1,6 @@
 /* Several sources one after another, as one. Places run on: a record of the second source stands behind all of the first. */
 #include "base/memory.h"
+#include "base/names.h"
 #include "model/block.h"
 #include "model/domain.h"
 
@@ -14,20 +15,16 @@ typedef struct joined {
     uint64_t *places; /* of the current block, where they do not follow one another */
     size_t capacity;
     uint64_t *missing;    /* summed over the parts; one a variable */
-    const char **ignored; /* of all parts, each name once */
-    size_t ignored_capacity;
+    bali_names ignored;   /* columns of all parts, each name once */
+    size_t n_noted;       /* parts whose ignored columns are among them */
     bal_source_summary summary;
 } joined;
 
 /* Adds the names that are not among those ignored yet. A name that finds no room is left out: it was told already. */
 static void add_ignored(joined *j, const bal_source_summary *part) {
-    for (size_t i = 0; i < part->n_ignored; i++) {
-        size_t known = 0;
-        while (known < j->summary.n_ignored && strcmp(j->ignored[known], part->ignored[i]) != 0) known++;
-        if (known < j->summary.n_ignored) continue;
-        if (!bali_grow((void **)&j->ignored, &j->ignored_capacity, known + 1, sizeof *j->ignored)) return;
-        j->ignored[j->summary.n_ignored++] = part->ignored[i];
-    }
+    size_t first;
+    for (size_t i = 0; i < part->n_ignored; i++)
+        if (!bali_names_add(&j->ignored, part->ignored[i], &first)) return;
 }
 
 /* The sums over all parts as far as they were read. */
@@ -48,10 +45,12 @@ static void sum_up(joined *j) {
         if (part.n_groups > j->summary.n_groups) j->summary.n_groups = part.n_groups;
         has_missing |= part.missing != NULL;
         for (size_t v = 0; part.missing && v < n; v++) j->missing[v] += part.missing[v];
-        add_ignored(j, &part);
+        if (p >= j->n_noted) add_ignored(j, &part);
     }
     j->summary.missing = has_missing ? j->missing : NULL;
-    j->summary.ignored = j->ignored;
+    if (j->n_noted <= j->at) j->n_noted = j->at + 1;
+    j->summary.ignored = j->ignored.names;
+    j->summary.n_ignored = j->ignored.n_names;
 }
 
 static bal_status shift_places(joined *j, bal_block *block, bal_error *err) {
@@ -104,7 +103,7 @@ static void joined_free(bal_source *source) {
     bali_free(j->first);
     bali_free(j->places);
     bali_free(j->missing);
-    bali_free(j->ignored);
+    bali_names_free(&j->ignored);
     bali_free(j);
 }
 

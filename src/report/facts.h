@@ -16,6 +16,7 @@ typedef struct bali_data_facts {
     size_t first_data, n_data;  /* those that gave the data */
     bool from_table;            /* false: the counts came with a network file */
     bool by_family;             /* records with missing cells were counted in the families they are complete for */
+    bool composite;             /* families count different records, so sums over families mix them */
     bool fractional;            /* some count is not whole: nothing can be left out one by one */
     bal_source_summary summary; /* of the table(s) */
     double records;             /* that were counted; under whole weights those the weights stand for */

@@ -33,7 +33,7 @@ static void put_prior(bali_json *json, const bali_fit_facts *facts) {
 static void put_scores(bali_json *json, const bali_fit_facts *facts) {
     const bal_fit *fit = facts->fit;
     bali_json_number(json, "log_marginal_likelihood", fit->scores.log_marginal_likelihood);
-    bali_json_boolean(json, "composite", facts->data->by_family);
+    bali_json_boolean(json, "composite", facts->data->composite);
     bali_json_number(json, "log_predictive", facts->log_predictive);
     bali_json_object(json, "loo");
     bali_json_number(json, "log_likelihood", fit->scores.leave_one_out);

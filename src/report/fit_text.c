@@ -102,7 +102,7 @@ static void put_scores(bali_text *text, const bali_fit_facts *facts, bali_text *
     double records = bali_scored_records(facts);
     if (isnan(records)) return;
     bali_text_printf(words, "log marginal likelihood %.3f nats", fit->scores.log_marginal_likelihood);
-    if (facts->data->by_family) bali_text_puts(words, " (composite: families count different records)");
+    if (facts->data->composite) bali_text_puts(words, " (composite: families count different records)");
     if (!isnan(facts->log_predictive)) bali_text_printf(words, "; of the new records given the old, %.3f", facts->log_predictive);
     if (!isnan(fit->scores.leave_one_out)) {
         bali_text_printf(words, "; leave-one-out %.4f a record", fit->scores.leave_one_out / records);

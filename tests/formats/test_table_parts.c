@@ -7,6 +7,7 @@
 #include "support/fixtures.h"
 #include "support/harness.h"
 
+#include <stdio.h>
 #include <string.h>
 
 enum { PART = 64 << 10, SIZE = 200 << 10 };
@@ -241,6 +242,34 @@ START_TEST(joined_tables_are_read_in_parts) {
 }
 END_TEST
 
+/* A file that takes the name while parts are read is another file: its records must not mix with the first one's. */
+START_TEST(a_replaced_file_is_not_mixed_in) {
+    bal_network *network = network_of("A:a,b ; B:x,y | A");
+    bal_source *source = NULL, *part = NULL;
+    bal_cells *counts = NULL, *wanted = NULL;
+    char path[1024], other[1024];
+    (void)snprintf(path, sizeof path, "%s", write_table(PLAIN));
+    bal_table_options options = bal_table_options_defaults();
+    ck_assert_int_eq(bal_table_open(bal_network_domain(network), path, &options, &source, NULL), BAL_OK);
+    ck_assert_int_eq(bal_tally(network, source, &wanted, NULL), BAL_OK);
+    bal_source_free(source);
+    ck_assert_int_eq(bal_table_open(bal_network_domain(network), path, &options, &source, NULL), BAL_OK);
+    ((bali_table *)source)->part_bytes = PART;
+    ck_assert_uint_eq(source->methods->parts->count(source), 4);
+    (void)snprintf(other, sizeof other, "%s", scratch_file("other.csv", "A,B,note\na,x,\n", 15));
+    ck_assert_int_eq(rename(other, path), 0);
+    ck_assert_int_eq(source->methods->parts->open(source, 1, &part, NULL), BAL_OK);
+    ck_assert_uint_gt(((bali_table *)source)->notes[1].remarks, 0);
+    bal_source_free(part);
+    ck_assert_int_eq(bal_tally_threads(network, source, 2, NULL, &counts, NULL), BAL_OK);
+    ck_assert_mem_eq(bali_cells_values(counts), bali_cells_values(wanted), bal_network_cells(network) * sizeof(double));
+    bal_source_free(source);
+    bal_cells_free(counts);
+    bal_cells_free(wanted);
+    bal_network_free(network);
+}
+END_TEST
+
 static Suite *suite(void) {
     Suite *s = suite_create("table_parts");
     TCase *c = tcase_create("parts");
@@ -248,6 +277,7 @@ static Suite *suite(void) {
     tcase_add_loop_test(c, parts_are_the_table, 0, N_ODDITIES);
     tcase_add_test(c, a_large_table_is_the_same);
     tcase_add_test(c, joined_tables_are_read_in_parts);
+    tcase_add_test(c, a_replaced_file_is_not_mixed_in);
     suite_add_tcase(s, c);
     return s;
 }
